@@ -1,0 +1,45 @@
+"""Subthreshold voltage fluctuations in passive dendrites, from linear cable theory.
+
+The public face is one page: `load_scenario` reads a scenario file into a `CableModel`; or make one from a
+`morphology.CellTree`, a `Membrane` and `SynapticInput`s. `CableModel.fluctuations()` is the main answer.
+"""
+
+from __future__ import annotations
+
+from os import PathLike
+
+from cable.noise.certificate import Certificate
+from cable.noise.fluctuations import Fluctuations, SiteFluctuations
+from cable.noise.model import CableModel, ModelError
+from cable.theory.kernel import Kernel
+from cable.theory.membrane import Membrane, MembraneZone
+from cable.theory.spiketrain import SpikeTrain
+from cable.theory.synapse import Placed, SynapticInput
+
+__version__ = "0.1.0"
+
+__all__ = [
+    "CableModel",
+    "Certificate",
+    "Fluctuations",
+    "Kernel",
+    "Membrane",
+    "MembraneZone",
+    "ModelError",
+    "Placed",
+    "SiteFluctuations",
+    "SpikeTrain",
+    "SynapticInput",
+    "load_scenario",
+]
+
+
+def load_scenario(path: str | PathLike[str]) -> CableModel:
+    """The model that a scenario file (TOML) describes.
+
+    Raises:
+        cable.desk.scenario.ScenarioError: the file is wrong; the error names file, key and remedy.
+    """
+    from cable.desk.scenario import load_scenario as load
+
+    return load(path)

@@ -1,0 +1,59 @@
+"""The command `cablenoise`. Each command is a module in `cable.desk.commands`, which imports what it needs
+only when it runs: the help must answer at once."""
+
+from __future__ import annotations
+
+import signal
+from typing import Annotated
+
+import typer
+
+from cable.desk.commands.along import along
+from cable.desk.commands.inspect import inspect
+from cable.desk.commands.map import map_
+from cable.desk.commands.start import start
+from cable.desk.commands.table import table
+from cable.desk.messages import version
+
+app = typer.Typer(
+    name="cablenoise",
+    help="Voltage fluctuations everywhere on a passive neuron under synaptic bombardment.",
+    epilog="Begin with: cablenoise start demo",
+    no_args_is_help=True,
+    add_completion=False,
+    rich_markup_mode=None,  # names of files are shown as they are, and the help stays quick
+    pretty_exceptions_enable=False,
+    context_settings={"help_option_names": ["-h", "--help"]},
+)
+
+app.command("inspect")(inspect)
+app.command("start")(start)
+app.command("table")(table)
+app.command("map")(map_)
+app.command("along")(along)
+
+
+def _show_version(asked: bool) -> None:
+    if asked:
+        typer.echo(f"cablenoise {version()}")
+        raise typer.Exit()
+
+
+@app.callback()
+def options(
+    _: Annotated[
+        bool,
+        typer.Option("--version", help="Show the version and stop.", callback=_show_version, is_eager=True),
+    ] = False,
+) -> None:
+    """Options of the program as a whole."""
+
+
+def _stop(number: int, frame: object) -> None:
+    raise KeyboardInterrupt
+
+
+def main() -> None:
+    """Entry point of the command; a polite kill is treated as Ctrl-C, so that no half file stays."""
+    signal.signal(signal.SIGTERM, _stop)
+    app()

@@ -1,0 +1,50 @@
+"""`cablenoise map`: the cell drawn to scale, with mean and SD (or another quantity) in colour."""
+
+from __future__ import annotations
+
+from typing import Annotated
+
+import typer
+
+from cable.desk.commands.shared import Force, Quantity, ScenarioArgument, ShareInput, Tolerance
+from cable.desk.terminal import command
+
+
+@command
+def map_(
+    scenario: ScenarioArgument,
+    out: Annotated[str, typer.Option(metavar="M.png|.svg|.pdf", help="The figure.")],
+    quantity: Quantity = None,
+    input_: ShareInput = None,
+    plane: Annotated[
+        str | None, typer.Option(metavar="xy|xz|yz", help="The plane to draw; else the flattest.")
+    ] = None,
+    tolerance: Tolerance = 1e-9,
+    force: Force = False,
+) -> None:
+    """Draw the cell to scale in colour: mean and SD side by side, or the quantity that is asked for."""
+    from cable.desk.figures.style import FIGURE_ENDINGS
+    from cable.desk.files import output
+    from cable.desk.messages import DeskError, quoted
+    from cable.desk.quantities import quantities
+    from cable.desk.scenario import read_scenario
+    from cable.desk.terminal import mention_findings, say_written
+
+    if plane not in (None, "xy", "xz", "yz"):
+        raise DeskError(
+            f"--plane: found {quoted(plane)}, expected xy, xz or yz; leave it out for the flattest"
+        )
+    read = read_scenario(scenario)
+    names = [i.name for i in read.model.inputs]
+    words = [quantity] if quantity else ["share"] if input_ else ["mean", "sd"]
+    chosen = [q for word in words for q in quantities(word, input_ or [], names)]
+    target = output(out, FIGURE_ENDINGS, force, read.files)
+    mention_findings(read)
+    field = read.model.fluctuations(tolerance=tolerance)
+
+    from cable.desk.figures.map import draw_map
+    from cable.desk.figures.style import save, styled
+
+    with styled():
+        save(draw_map(field, chosen, plane, read.title), target, read.title)
+    say_written(target.path)

@@ -1,0 +1,40 @@
+"""`cablenoise table`: mean, SD and their company at every point, or at the named sites."""
+
+from __future__ import annotations
+
+from typing import Annotated
+
+import typer
+
+from cable.desk.commands.shared import Force, ScenarioArgument, Tolerance
+from cable.desk.terminal import command
+
+
+@command
+def table(
+    scenario: ScenarioArgument,
+    out: Annotated[
+        str | None, typer.Option(metavar="T.csv|.json|.npz", help="Every point of the cell, into this file.")
+    ] = None,
+    sites: Annotated[bool, typer.Option("--sites", help="The named sites only.")] = False,
+    tolerance: Tolerance = 1e-9,
+    force: Force = False,
+) -> None:
+    """Mean, SD, correlation time and input resistance; without --out, the named sites on the terminal."""
+    from cable.desk.files import output
+    from cable.desk.scenario import read_scenario
+    from cable.desk.site_table import metadata, points_table, sites_table
+    from cable.desk.tables import TABLE_ENDINGS, write_table
+    from cable.desk.terminal import mention_findings, say_written
+    from cable.desk.terminal_table import print_table
+
+    read = read_scenario(scenario)
+    target = output(out, TABLE_ENDINGS, force, read.files) if out is not None else None
+    mention_findings(read)
+    field = read.model.fluctuations(tolerance=tolerance)
+    if target is None:
+        notes = [*field.certificate.sentences(), *([field.upcrossing_note] if field.upcrossing_note else [])]
+        print_table(sites_table(field), list(field.variance_by_input_mV2), notes, read.title)
+        return
+    write_table(sites_table(field) if sites else points_table(field), target, metadata(read, field))
+    say_written(target.path)

@@ -1,0 +1,86 @@
+"""The quantities that a figure can show, each with its words, its unit and its values."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+import numpy as np
+from numpy.typing import NDArray
+
+from cable.desk.messages import DeskError, choices, did_you_mean, quoted
+
+if TYPE_CHECKING:
+    from cable.desk.tables import Table
+    from cable.noise.fluctuations import Fluctuations
+
+Floats = NDArray[np.float64]
+LABELS = {
+    "mean": "mean (mV)",
+    "sd": "SD (mV)",
+    "variance": "variance (mV²)",
+    "correlation-time": "correlation time (ms)",
+    "input-resistance": "input resistance (MΩ)",
+    "share": "% of the variance",
+}
+COLUMNS = {
+    "mean": "mean_mV",
+    "sd": "sd_mV",
+    "variance": "variance_mV2",
+    "correlation-time": "correlation_time_ms",
+    "input-resistance": "input_resistance_MOhm",
+}
+
+
+@dataclass(frozen=True)
+class Quantity:
+    """One quantity to show: its word on the command line, its label with the unit, its input for a share."""
+
+    word: str
+    label: str
+    input: str | None = None
+
+    def values(self, field: Fluctuations) -> Floats:
+        """(N,) the quantity at every point."""
+        if self.input is None:
+            return np.asarray(getattr(field, COLUMNS[self.word]), dtype=float)
+        return _percent(field.variance_by_input_mV2[self.input], field.variance_mV2)
+
+    def of_table(self, table: Table) -> Floats:
+        """The quantity at every row of a site table."""
+        if self.input is None:
+            return np.asarray(table.columns[COLUMNS[self.word]], dtype=float)
+        part = np.asarray(table.columns[f"variance_{self.input}_mV2"], dtype=float)
+        return _percent(part, np.asarray(table.columns["variance_mV2"], dtype=float))
+
+
+def quantities(word: str, inputs: Sequence[str], known_inputs: Sequence[str]) -> list[Quantity]:
+    """The quantities that the options ask for: one, or one a named input for a share.
+
+    Raises:
+        DeskError: an unknown quantity or input, a share of no input, or an input beside another quantity.
+    """
+    if word not in LABELS:
+        raise DeskError(
+            f"--quantity: found {quoted(word)}, expected {choices(LABELS)}; {did_you_mean(word, LABELS)}"
+        )
+    if word != "share":
+        if inputs:
+            raise DeskError(f'--input: goes with --quantity share, found it with "{word}"; take it out')
+        return [Quantity(word, LABELS[word])]
+    if not inputs:
+        raise DeskError(f"--quantity share: needs --input NAME; {_list(known_inputs)}")
+    for name in inputs:
+        if name not in known_inputs:
+            raise DeskError(f"--input: there is no input {quoted(name)}; {_list(known_inputs)}")
+    return [Quantity(word, f"{name}: {LABELS[word]}", name) for name in dict.fromkeys(inputs)]
+
+
+def _list(names: Sequence[str]) -> str:
+    return f"the scenario has {choices([quoted(n) for n in names], 'and') or 'no input'}"
+
+
+def _percent(part: Floats, whole: Floats) -> Floats:
+    with np.errstate(invalid="ignore", divide="ignore"):
+        return np.where(whole > 0, 100 * part / whole, np.nan)

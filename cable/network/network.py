@@ -1,0 +1,141 @@
+"""A passive tree as one linear network at any frequency: admittances, elimination, sources spread on pieces.
+
+A piece that tapers, or whose sources are uneven along it, is the even cylinder of the same totals with its
+first moments put right: with m the centroid of what is spread along it, measured from the middle in units
+of its axial resistance, the near end gets the share 1 - 2m of an admittance or current and the far end
+1 + 2m (1 - 3m and 1 + 3m of a noise covariance). What is left then falls with the fourth power of the
+number of pieces instead of the second (derived here; a test asserts the order).
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from functools import cached_property
+
+import numpy as np
+from numpy.typing import NDArray
+from scipy import sparse
+
+from cable.network.elimination import Factors, Impedances, eliminate, impedances, solve, variances
+from cable.network.plan import Plan, plan_elimination
+from cable.theory.cylinder import CylinderForm, cylinder_form
+
+Floats = NDArray[np.float64]
+Complexes = NDArray[np.complex128]
+Ints = NDArray[np.int64]
+
+
+@dataclass(frozen=True, eq=False)
+class Network:
+    """E pieces and E + 1 nodes with conductances and capacitances; piece i joins node i + 1 to its parent.
+
+    Attributes:
+        parent: (E + 1,) parent node, -1 for the root.
+        resistance_GOhm: (E,) axial resistance of each piece.
+        conductance_nS, capacitance_pF: (E,) membrane of each piece, tonic synaptic conductance included.
+        node_conductance_nS, node_capacitance_pF: (E + 1,) what is lumped at nodes (spheres, point synapses).
+        lean: (E,) the centroid m of the piece's membrane, -1/2 to 1/2.
+        tilt_nS: (E,) conductance to move from the near to the far end, for what is not spread like membrane.
+    """
+
+    parent: Ints
+    resistance_GOhm: Floats
+    conductance_nS: Floats
+    capacitance_pF: Floats
+    node_conductance_nS: Floats
+    node_capacitance_pF: Floats
+    lean: Floats
+    tilt_nS: Floats
+
+    @cached_property
+    def plan(self) -> Plan:
+        """The order of elimination."""
+        return plan_elimination(self.parent)
+
+    @cached_property
+    def _near_ends(self) -> sparse.csr_array:
+        """(E + 1, E) of ones: adds to each node what the pieces that begin there give to their near ends."""
+        pieces = np.arange(len(self.parent) - 1)
+        return sparse.csr_array((np.ones(len(pieces)), (self.parent[1:], pieces)), shape=(len(self.parent), len(pieces)))
+
+    def to_nodes(self, near: NDArray, far: NDArray) -> NDArray:
+        """Sum at the nodes (E + 1, F) of what each piece gives to its near end and to its far end (E, F)."""
+        nodes = (self._near_ends @ np.ascontiguousarray(near).view(np.float64)).view(near.dtype)
+        nodes[1:] += far
+        return nodes
+
+    def at(self, omega_per_ms: Floats) -> Response:
+        """The network eliminated at the angular frequencies ω (F,), rad/ms."""
+        omega = np.asarray(omega_per_ms, dtype=float)
+        x2 = np.empty((len(self.resistance_GOhm), len(omega)), dtype=np.complex128)
+        x2.real = (self.resistance_GOhm * self.conductance_nS)[:, None]
+        x2.imag = (self.resistance_GOhm * self.capacitance_pF)[:, None] * omega
+        form = cylinder_form(x2)
+        axial = (1 / self.resistance_GOhm)[:, None]
+        even, uneven = form.shunt * axial, form.shunt * (2 * self.lean[:, None] * axial)
+        uneven += self.tilt_nS[:, None]
+        shunt = self.to_nodes(even - uneven, even + uneven)
+        shunt += self.node_conductance_nS[:, None] + 1j * omega * self.node_capacitance_pF[:, None]
+        return Response(self, omega, x2, form, eliminate(self.plan, shunt, form.coupling * axial))
+
+    @property
+    def slowest_rate_per_ms(self) -> float:
+        """A lower bound of all relaxation rates: the least conductance per capacitance of any part, 1/ms."""
+        ratios = [self.conductance_nS / self.capacitance_pF]
+        lumped = self.node_capacitance_pF > 0
+        ratios.append(self.node_conductance_nS[lumped] / self.node_capacitance_pF[lumped])
+        return float(np.concatenate(ratios).min())
+
+
+@dataclass(frozen=True, eq=False)
+class Response:
+    """A network at one block of F frequencies."""
+
+    network: Network
+    omega_per_ms: Floats
+    x2: Complexes
+    form: CylinderForm
+    factors: Factors
+
+    @cached_property
+    def impedances(self) -> Impedances:
+        """Input and edge impedances in the plan's order."""
+        return impedances(self.factors)
+
+    def input_impedance_GOhm(self) -> Complexes:
+        """(E + 1, F) input impedance of each node, GΩ."""
+        return self.impedances.point[self.network.plan.node]
+
+    def spectra(self, piece_strength: Floats, piece_lean: Floats, node_strength: Floats) -> Floats:
+        """(E + 1, F) voltage spectra for independent white current sources.
+
+        Args:
+            piece_strength: (E,) spectrum of the current of each piece, spread over it, white in space.
+            piece_lean: (E,) centroid of that spectrum along the piece.
+            node_strength: (E + 1,) spectrum of the currents at nodes.
+        """
+        even, lean = piece_strength[:, None] * self.form.noise_self, 3 * piece_lean[:, None]
+        self_noise = self.network.to_nodes(even * (1 - lean), even * (1 + lean))
+        self_noise += node_strength[:, None]
+        return variances(self.factors, self.impedances, self_noise, piece_strength[:, None] * self.form.noise_cross)
+
+    def voltages(self, piece_current: Floats, piece_moment: Floats, node_current: Floats) -> Complexes:
+        """(E + 1, F) voltages for currents in step.
+
+        Args:
+            piece_current: (E,) current spread over each piece.
+            piece_moment: (E,) its first moment, current times centroid.
+            node_current: (E + 1,) currents at nodes.
+        """
+        tiny = np.abs(self.x2) < 1e-200
+        share = np.where(tiny, 0.5, self.form.shunt / np.where(tiny, 1.0, self.x2))
+        near, far = piece_current - 2 * piece_moment, piece_current + 2 * piece_moment
+        current = self.network.to_nodes(near[:, None] * share, far[:, None] * share)
+        current += node_current[:, None]
+        return solve(self.factors, current)
+
+    def column(self, node: int) -> Complexes:
+        """(E + 1, F) transfer impedance between every node and `node`, GΩ."""
+        current = np.zeros((len(self.network.parent), len(self.omega_per_ms)), dtype=np.complex128)
+        current[node] = 1.0
+        return solve(self.factors, current)

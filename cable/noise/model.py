@@ -1,0 +1,134 @@
+"""A cell with its membrane, inputs and sites: the value from which every answer is computed."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from functools import cached_property
+from typing import TYPE_CHECKING
+
+from cable.noise.refinement import Refined, refine
+from cable.theory.membrane import Membrane
+from cable.theory.synapse import SynapticInput
+from morphology import CellTree, Place, PlaceError, Site, Zone, ZonePart
+
+if TYPE_CHECKING:
+    from cable.noise.fluctuations import Fluctuations
+
+
+class ModelError(ValueError):
+    """Parts of a model that do not fit together; `key` says which, as in "input[1].where"."""
+
+    def __init__(self, key: str, message: str) -> None:
+        super().__init__(f"{key}: {message}")
+        self.key, self.message = key, message
+
+
+@dataclass(frozen=True, eq=False)
+class CableModel:
+    """A passive dendritic tree under synaptic bombardment.
+
+    Attributes:
+        tree: the reconstruction.
+        membrane: its passive constants.
+        inputs: the populations of synapses.
+        sites: named points; "soma" is always the first site and need not be given.
+        threshold_mV: the level whose upcrossings are counted, if any.
+        title: a title for tables and figures.
+
+    Raises:
+        ModelError: a name used twice, a zone that selects nothing, a site that names no place or several.
+    """
+
+    tree: CellTree
+    membrane: Membrane
+    inputs: tuple[SynapticInput, ...] = ()
+    sites: tuple[Site, ...] = ()
+    threshold_mV: float | None = None
+    title: str = ""
+
+    def __post_init__(self) -> None:
+        object.__setattr__(self, "inputs", tuple(self.inputs))
+        object.__setattr__(self, "sites", tuple(self.sites))
+        for key, names in (("input", [i.name for i in self.inputs]), ("site", ["soma", *(s.name for s in self.sites)])):
+            for index, name in enumerate(names):
+                if name in names[:index]:
+                    place = index - 1 if key == "site" else index
+                    extra = " (soma is always a site)" if key == "site" and name == "soma" else ""
+                    raise ModelError(f"{key}[{place}].name", f"the name {name!r} is used twice{extra}; choose another")
+        self.membrane_parts, self.input_parts, self.input_places, self.site_places  # noqa: B018 - checks them now
+
+    def _part(self, zone: Zone, key: str) -> ZonePart:
+        try:
+            part = zone.resolve(self.tree)
+        except PlaceError as error:
+            raise ModelError(f"{key}.subtree_of", str(error)) from None
+        if part.empty:
+            raise ModelError(key, "the zone selects nothing of this cell; widen its ranges or check its kinds")
+        return part
+
+    def _place(self, site: Site, key: str) -> Place:
+        try:
+            return site.resolve(self.tree)
+        except PlaceError as error:
+            raise ModelError(key, str(error)) from None
+
+    @cached_property
+    def membrane_parts(self) -> list[ZonePart]:
+        """The membrane's zones, resolved."""
+        return [self._part(zone.where, f"membrane.zone[{k}].where") for k, zone in enumerate(self.membrane.zones)]
+
+    @cached_property
+    def input_parts(self) -> list[ZonePart | None]:
+        """Each input's zone, resolved; None for point synapses."""
+        parts: list[ZonePart | None] = []
+        for k, one in enumerate(self.inputs):
+            part = None if one.where is None else self._part(one.where, f"input[{k}].where")
+            if part is not None and not one.by_area and not (part.high > part.low).any():
+                density = "density_per_um2" if one.count is None else 'spread = "area"'
+                raise ModelError(f"input[{k}].where", f"the zone holds only a one-point soma, which has no length; use {density}")
+            parts.append(part)
+        return parts
+
+    @cached_property
+    def input_places(self) -> list[list[Place]]:
+        """Each input's point synapses, resolved."""
+        return [[self._place(p.site, f"input[{k}].at[{j}]") for j, p in enumerate(one.at)] for k, one in enumerate(self.inputs)]
+
+    @cached_property
+    def site_places(self) -> dict[str, Place]:
+        """Every site's place, "soma" first."""
+        places = {"soma": Place(self.tree.shape.soma)}
+        return places | {site.name: self._place(site, f"site[{k}].at") for k, site in enumerate(self.sites)}
+
+    @property
+    def site_names(self) -> tuple[str, ...]:
+        """Names of all sites, "soma" first."""
+        return tuple(self.site_places)
+
+    @property
+    def parts(self) -> list[ZonePart]:
+        """All resolved zones, whose limits cut the cell."""
+        return self.membrane_parts + [part for part in self.input_parts if part is not None]
+
+    @property
+    def places(self) -> list[Place]:
+        """All places that must be nodes."""
+        return list(self.site_places.values()) + [place for places in self.input_places for place in places]
+
+    @cached_property
+    def refined(self) -> Refined:
+        """The operating point on a converged layout."""
+        return refine(self)
+
+    def fluctuations(self, tolerance: float = 1e-9) -> Fluctuations:
+        """Mean, variance and what follows from them at every point of the tree and every site.
+
+        Args:
+            tolerance: relative error of each variance that the frequency integral is certified to.
+
+        Raises:
+            NotConverged: the tolerance cannot be reached.
+        """
+        from cable.noise.fluctuations import fluctuations
+
+        return fluctuations(self, tolerance)

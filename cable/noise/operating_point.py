@@ -1,0 +1,192 @@
+"""The mean state: mean voltage and total conductance everywhere, and the noise that the inputs make around it.
+
+The operating point is the zero-frequency network with all mean conductances, reversal potentials and mean
+currents. Around it everything is linear: a conductance event at a place drives the current g·k(t)·(E - V̄)
+there (effective-time-constant approximation; Richardson 2004, Phys Rev E 69:051918; from memory).
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from functools import cached_property
+from typing import TYPE_CHECKING
+
+import numpy as np
+from numpy.typing import NDArray
+
+from cable.network.assembly import Passive, passive, synapse_numbers
+from cable.network.layout import Layout, lay_out
+from cable.network.network import Network, Response
+from cable.theory.cylinder import mean_square_along, spread_current
+from cable.theory.synapse import SynapticInput
+
+if TYPE_CHECKING:
+    from cable.noise.model import CableModel
+
+Floats = NDArray[np.float64]
+LEAN_LIMIT = 0.28  # a noise covariance stays positive for centroids up to 1/√12; division brings them below
+
+
+@dataclass(frozen=True, eq=False)
+class Source:
+    """One population as a source of current noise around the operating point.
+
+    The spectrum of the current of a piece or node is its strength times `colour`. Where spike trains are
+    correlated, the correlated part drives all synapses in step with amplitudes of which strength is the square sum.
+
+    Attributes:
+        population: the synapses.
+        piece_strength, node_strength: (E,), (E + 1,) sums of rate·amplitude² over the synapses, pA²/ms.
+        piece_lean: (E,) centroid of that strength along the piece.
+        piece_amplitude, node_amplitude: (E,), (E + 1,) sums of √rate·amplitude, pA/√ms.
+        piece_moment: (E,) first moment of the amplitude along the piece.
+    """
+
+    population: SynapticInput
+    piece_strength: Floats
+    piece_lean: Floats
+    node_strength: Floats
+    piece_amplitude: Floats
+    piece_moment: Floats
+    node_amplitude: Floats
+
+    def colour(self, omega_per_ms: Floats) -> Floats:
+        """(F,) |k̂(ω)|² times the spectrum of one spike train over its rate, ms²."""
+        one = self.population
+        return np.abs(one.kernel.transform(omega_per_ms)) ** 2 * one.spike_train.spectrum_over_rate(omega_per_ms, one.rate_Hz)
+
+    def spectrum(self, response: Response) -> Floats:
+        """(E + 1, F) two-sided spectrum of the voltage that this population makes at every node, mV²·ms."""
+        correlation = self.population.correlation
+        spectrum = np.zeros((len(self.node_strength), len(response.omega_per_ms)))
+        if correlation < 1:
+            spectrum += (1 - correlation) * response.spectra(self.piece_strength, self.piece_lean, self.node_strength)
+        if correlation > 0:
+            spectrum += correlation * np.abs(response.voltages(self.piece_amplitude, self.piece_moment, self.node_amplitude)) ** 2
+        return spectrum * self.colour(response.omega_per_ms)
+
+
+@dataclass(frozen=True, eq=False)
+class OperatingPoint:
+    """The mean state of a model on one layout.
+
+    Attributes:
+        layout: the pieces.
+        passive: the cell without input.
+        network: the cell with the inputs' mean conductances.
+        numbers: per input, the synapses on pieces (E,) and at nodes (E + 1,).
+        reference_mV: the voltage from which `deviation_mV` counts.
+        deviation_mV: (E + 1,) mean voltage at nodes, from the reference.
+        far_mV: (E,) mean voltage of each piece far from its ends, from the reference.
+    """
+
+    model: CableModel
+    layout: Layout
+    passive: Passive
+    network: Network
+    numbers: tuple[tuple[Floats, Floats], ...]
+    reference_mV: float
+    deviation_mV: Floats
+    far_mV: Floats
+
+    @property
+    def mean_mV(self) -> Floats:
+        """(E + 1,) mean voltage at every node, mV."""
+        return self.reference_mV + self.deviation_mV
+
+    @cached_property
+    def sources(self) -> tuple[Source, ...]:
+        """The inputs as current noise around this mean state."""
+        return tuple(self._source(one, *numbers) for one, numbers in zip(self.model.inputs, self.numbers, strict=True))
+
+    def _source(self, one: SynapticInput, on_pieces: Floats, at_nodes: Floats) -> Source:
+        rate = one.rate_per_ms
+        lean = self.layout.lean_of_area if one.by_area else self.layout.lean_of_length
+        if one.current_pA is not None:
+            mean = np.full(len(on_pieces), one.current_pA)
+            square, node_mean = mean**2, np.full(len(at_nodes), one.current_pA)
+            moment, square_lean = mean * lean, lean
+        else:
+            assert one.conductance_nS is not None and one.reversal_mV is not None
+            peak, reversal = one.conductance_nS, one.reversal_mV - self.reference_mV
+            near, far = reversal - self.deviation_mV[self.network.parent[1:]], reversal - self.deviation_mV[1:]
+            still = reversal - self.far_mV
+            x2 = self.network.resistance_GOhm * self.network.conductance_nS
+            share = spread_current(np.asarray(x2, dtype=np.complex128)).real
+            force, force_square = still + share * (near + far - 2 * still), mean_square_along(x2, near, far, still)
+            mean, square, node_mean = peak * force, peak**2 * force_square, peak * (reversal - self.deviation_mV)
+            moment = mean * lean + peak * (far - near) / 12
+            with np.errstate(divide="ignore", invalid="ignore"):
+                square_lean = lean + np.where(force_square > 0, (far**2 - near**2) / (12 * force_square), 0.0)
+        return Source(
+            population=one,
+            piece_strength=rate * on_pieces * square,
+            piece_lean=np.clip(square_lean, -LEAN_LIMIT, LEAN_LIMIT),
+            node_strength=rate * at_nodes * node_mean**2,
+            piece_amplitude=np.sqrt(rate) * on_pieces * mean,
+            piece_moment=np.sqrt(rate) * on_pieces * moment,
+            node_amplitude=np.sqrt(rate) * at_nodes * node_mean,
+        )
+
+    def needs_division(self) -> NDArray[np.bool_]:
+        """(E,) pieces that stand for something that is not even along them: a taper, or a driving force."""
+        uneven = self.layout.tapers.copy()
+        for one, (on_pieces, _) in zip(self.model.inputs, self.numbers, strict=True):
+            if one.conductance_nS is not None:
+                uneven |= on_pieces > 0
+        return uneven
+
+    def unevenness(self, omega_per_ms: float) -> Floats:
+        """(E,) size of what is lost by taking a piece as even, relative to the piece's own effect.
+
+        It is the misplaced first moment of admittance (taper) or of noise (driving force), times the
+        electrotonic length that it is misplaced by; it falls with the square of the number of divisions.
+        """
+        first, last = self.layout.radii_um
+        network = self.network
+        x2 = network.resistance_GOhm * np.hypot(network.conductance_nS, omega_per_ms * network.capacitance_pF)
+        lost = 0.5 * x2 * np.abs(first - last) / (first + last)
+        step = np.abs(self.deviation_mV[1:] - self.deviation_mV[network.parent[1:]])
+        for one, (on_pieces, _) in zip(self.model.inputs, self.numbers, strict=True):
+            if one.reversal_mV is not None:
+                force = np.abs(one.reversal_mV - self.mean_mV[1:]) + step
+                share = np.divide(step, force, out=np.zeros_like(step), where=force > 0)
+                lost = np.maximum(lost, np.where(on_pieces > 0, share * np.sqrt(x2) / 3, 0.0))
+        return lost
+
+
+def operating_point(model: CableModel, divide: NDArray[np.int64] | None = None) -> OperatingPoint:
+    """The mean state of `model`, with each stretch between cuts divided as `divide` (segments,) says."""
+    layout = lay_out(model.tree, model.parts, model.places, divide)
+    cell = passive(layout, model.membrane, model.membrane_parts)
+    conductance, node_conductance = cell.leak_nS.copy(), cell.node_leak_nS.copy()
+    along = np.zeros_like(conductance)
+    reference = float(model.membrane.rest_mV)
+    drive = cell.leak_nS * (cell.rest_mV - reference)
+    node_drive = cell.node_leak_nS * (cell.node_rest_mV - reference)
+    moment = drive * layout.lean_of_area
+    numbers = []
+    for one, part, places in zip(model.inputs, model.input_parts, model.input_places, strict=True):
+        on_pieces, at_nodes = synapse_numbers(layout, one, part, places)
+        numbers.append((on_pieces, at_nodes))
+        mean = one.mean_conductance_nS
+        per_synapse = one.mean_current_pA if one.reversal_mV is None else mean * (one.reversal_mV - reference)
+        conductance += mean * on_pieces
+        node_conductance += mean * at_nodes
+        drive += per_synapse * on_pieces
+        node_drive += per_synapse * at_nodes
+        moment += per_synapse * on_pieces * (layout.lean_of_area if one.by_area else layout.lean_of_length)
+        along += 0.0 if one.by_area else mean * on_pieces
+    share = spread_current(np.asarray(cell.resistance_GOhm * conductance, dtype=np.complex128)).real
+    network = Network(
+        parent=layout.parent,
+        resistance_GOhm=cell.resistance_GOhm,
+        conductance_nS=conductance,
+        capacitance_pF=cell.capacitance_pF,
+        node_conductance_nS=node_conductance,
+        node_capacitance_pF=cell.node_capacitance_pF,
+        lean=layout.lean_of_area,
+        tilt_nS=2 * share * along * (layout.lean_of_length - layout.lean_of_area),
+    )
+    deviation = network.at(np.zeros(1)).voltages(drive, moment, node_drive)[:, 0].real
+    return OperatingPoint(model, layout, cell, network, tuple(numbers), reference, deviation, drive / conductance)

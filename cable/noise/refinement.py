@@ -1,0 +1,76 @@
+"""How finely tapering cylinders and varying driving forces are divided, and how far that is from converged.
+
+The error of even pieces falls with the square of their number, so the difference between a layout and the
+one with twice as many pieces, times 4/3, is the layout's own error. Stretches without taper and without
+conductance input are exact in one piece, however long.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from cable.noise.operating_point import OperatingPoint, operating_point
+
+if TYPE_CHECKING:
+    from cable.noise.model import CableModel
+
+TARGET = 1e-6  # of the variance at any point
+LOCAL = 2e-4  # of a piece's own effect, which is a small part of the whole
+PROBE_STEP, PROBES = 1.5, 4  # probes at ω = ω₀ sinh(0, 1.5, 3, 4.5): a crude variance, for comparison only
+MAX_ROUNDS = 6
+MAX_PIECES = 2_000_000
+
+
+@dataclass(frozen=True, eq=False)
+class Refined:
+    """An operating point whose division has converged, and the certified relative error that is left."""
+
+    point: OperatingPoint
+    relative_error: float
+
+
+def refine(model: CableModel) -> Refined:
+    """Divide until means and a crude variance have converged to `TARGET` at every point."""
+    point = operating_point(model)
+    uneven = np.zeros(point.layout.segments, dtype=bool)
+    uneven[point.layout.segment[point.needs_division()]] = True
+    if not uneven.any():
+        return Refined(point, 0.0)
+    lost = np.zeros(len(uneven))
+    np.maximum.at(lost, point.layout.segment, point.unevenness(4 * point.network.slowest_rate_per_ms))
+    divide = np.where(uneven, np.maximum(1, np.ceil(np.sqrt(lost / LOCAL))), 1).astype(np.int64)
+    if (divide > 1).any():
+        point = operating_point(model, divide)
+    for _ in range(MAX_ROUNDS):
+        finer = operating_point(model, np.where(uneven, 2 * divide, divide))
+        error = _difference(point, finer) * 4 / 3
+        if error <= TARGET or finer.layout.row.size > MAX_PIECES:
+            break
+        times = max(2, int(np.ceil(np.sqrt(2 * error / TARGET))))
+        if times == 2:
+            divide, point = np.where(uneven, 2 * divide, divide), finer
+        else:
+            divide = np.where(uneven, times * divide, divide)
+            point = operating_point(model, divide)
+    return Refined(point, error)
+
+
+def _difference(coarse: OperatingPoint, fine: OperatingPoint) -> float:
+    """Largest relative difference of mean or crude variance between two layouts, at the tree's points."""
+    one, other = coarse.layout.row_node, fine.layout.row_node
+    size = np.abs(fine.deviation_mV).max() or 1.0
+    mean = float(np.abs(coarse.deviation_mV[one] - fine.deviation_mV[other]).max() / size)
+    u = PROBE_STEP * np.arange(PROBES)
+    omega0 = coarse.network.slowest_rate_per_ms
+    weights = np.cosh(u) * np.r_[0.5, np.ones(PROBES - 1)]
+    crude = [
+        sum(source.spectrum(response) for source in point.sources)[rows] @ weights
+        for point, rows in ((coarse, one), (fine, other))
+        if (response := point.network.at(omega0 * np.sinh(u)))
+    ]
+    with np.errstate(divide="ignore", invalid="ignore"):
+        variance = np.where(crude[1] > 0, np.abs(crude[0] / crude[1] - 1), 0.0)
+    return max(mean, float(variance.max(initial=0.0)))

@@ -1,0 +1,168 @@
+"""The time course of one synaptic event: peak 1, zero before t = 0, with its exact transform.
+
+Every kernel is a finite sum of terms c·tⁿ·e^{-pt} with Re p > 0, so its transform is a ratio of polynomials in
+s = iω and nothing about it is sampled. The transform is kept as one fraction, N(s)/Π(1 + s/p): summed term
+by term it would lose its leading digits at high frequency, where the terms cancel.
+"""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+from functools import cached_property
+from typing import TYPE_CHECKING
+
+import numpy as np
+from numpy.typing import NDArray
+
+from cable.theory.membrane import check_positive
+
+if TYPE_CHECKING:
+    import sympy
+
+
+@dataclass(frozen=True)
+class Term:
+    """One term c·tⁿ·e^{-pt} of a kernel, t in ms; complex p come in conjugate pairs."""
+
+    factor: complex
+    power: int
+    rate_per_ms: complex
+
+
+@dataclass(frozen=True)
+class Kernel:
+    """Time course of one event, scaled to a peak of 1.
+
+    Attributes:
+        terms: the sum that it is.
+        numerator: coefficients of N(s), constant first.
+        poles_per_ms: the p of Π(1 + s/p), repeated by multiplicity.
+        text: the kernel as a formula in t (ms).
+    """
+
+    terms: tuple[Term, ...]
+    numerator: tuple[float, ...]
+    poles_per_ms: tuple[complex, ...]
+    text: str
+
+    @classmethod
+    def exponential(cls, decay_ms: float) -> Kernel:
+        """e^{-t/decay}: jumps to 1 at t = 0.
+
+        Raises:
+            ValueError: decay_ms is not a finite number above zero.
+        """
+        check_positive(decay_ms, "decay_ms")
+        rate = 1 / decay_ms
+        return cls((Term(1.0, 0, rate),), (decay_ms,), (rate,), f"exp(-t/{decay_ms!r})")
+
+    @classmethod
+    def alpha(cls, alpha_ms: float) -> Kernel:
+        """(t/α)·e^{1-t/α}: the alpha function, with its peak at t = α (Rall 1967, J Neurophysiol 30:1138; from memory).
+
+        Raises:
+            ValueError: alpha_ms is not a finite number above zero.
+        """
+        check_positive(alpha_ms, "alpha_ms")
+        rate = 1 / alpha_ms
+        return cls((Term(math.e * rate, 1, rate),), (math.e * alpha_ms,), (rate, rate), f"t/{alpha_ms!r}*exp(1 - t/{alpha_ms!r})")
+
+    @classmethod
+    def two_exponential(cls, rise_ms: float, decay_ms: float) -> Kernel:
+        """(e^{-t/decay} - e^{-t/rise}) over its peak.
+
+        Raises:
+            ValueError: a time is not positive and finite, or rise_ms is not below decay_ms.
+        """
+        check_positive(rise_ms, "rise_ms")
+        check_positive(decay_ms, "decay_ms")
+        if not rise_ms < decay_ms:
+            raise ValueError(f"rise_ms ({rise_ms:g}) must be below decay_ms ({decay_ms:g}); for equal times use alpha_ms")
+        gap = 1 / rise_ms - 1 / decay_ms
+        log_ratio = math.log1p((decay_ms - rise_ms) / rise_ms)
+        scale = math.exp(log_ratio / gap / decay_ms) / -math.expm1(-log_ratio)
+        # the peak is e^{-t*/decay}(1 - rise/decay) at t* = log(decay/rise)/gap
+        terms = Term(scale, 0, 1 / decay_ms), Term(-scale, 0, 1 / rise_ms)
+        text = f"{scale!r}*(exp(-t/{decay_ms!r}) - exp(-t/{rise_ms!r}))"
+        return cls(terms, (scale * (decay_ms - rise_ms),), (1 / rise_ms, 1 / decay_ms), text)
+
+    @classmethod
+    def expression(cls, text: str) -> Kernel:
+        """A kernel from arithmetic in t (ms): numbers, + - * / ** ( ), exp, sin, cos, pi; scaled to a peak of 1.
+
+        Raises:
+            ValueError: not arithmetic in t, not a sum of polynomials times exponentials, or it does not decay.
+        """
+        from cable.theory.expression import kernel_from_text
+
+        return kernel_from_text(text)
+
+    def value(self, t_ms: NDArray[np.float64] | float) -> NDArray[np.float64]:
+        """The kernel at times t_ms (...), 0 before t = 0."""
+        t = np.asarray(t_ms, dtype=float)
+        after = np.maximum(t, 0.0)
+        total = sum((term.factor * after**term.power * np.exp(-term.rate_per_ms * after)).real for term in self.terms)
+        return np.where(t >= 0, total, 0.0)
+
+    def transform(self, omega_per_ms: NDArray[np.float64] | float) -> NDArray[np.complex128]:
+        """∫k(t)e^{-iωt}dt at ω (...), rad/ms; in ms."""
+        return self.laplace(1j * np.asarray(omega_per_ms, dtype=float))
+
+    def laplace(self, s_per_ms: NDArray[np.complex128] | float) -> NDArray[np.complex128]:
+        """∫k(t)e^{-st}dt at complex s (...), 1/ms; in ms."""
+        s = np.asarray(s_per_ms, dtype=complex)
+        value = np.polynomial.polynomial.polyval(s, self.numerator)
+        for pole in self.poles_per_ms:
+            value = value / (1 + s / pole)
+        return value
+
+    @property
+    def area_ms(self) -> float:
+        """∫k dt, ms."""
+        return float(self.numerator[0])
+
+    @property
+    def falls_as(self) -> int:
+        """The n with k̂ ~ ω^{-n} at high frequency: 1 for a kernel that jumps at t = 0, 2 for one with a corner."""
+        return len(self.poles_per_ms) - (len(self.numerator) - 1)
+
+    @property
+    def slowest_rate_per_ms(self) -> float:
+        """The slowest rate at which the kernel decays, 1/ms."""
+        return min(complex(p).real for p in self.poles_per_ms)
+
+    @cached_property
+    def peak_ms(self) -> float:
+        """The time of the peak, ms."""
+        return peak_of(self.value, self.poles_per_ms)[0]
+
+    @cached_property
+    def latex(self) -> str:
+        """The kernel as LaTeX."""
+        import sympy
+
+        return str(sympy.latex(self.symbolic))
+
+    @property
+    def symbolic(self) -> sympy.Expr:
+        """The kernel as a sympy expression in t (ms)."""
+        from cable.theory.expression import parse_expression
+
+        return parse_expression(self.text)
+
+
+def peak_of(value, poles_per_ms: tuple[complex, ...]) -> tuple[float, float]:
+    """Time (ms) and height of the largest absolute value of a kernel with these poles."""
+    from scipy.optimize import minimize_scalar
+
+    slow = min(complex(p).real for p in poles_per_ms)
+    fast = max(abs(p) for p in poles_per_ms)
+    times = np.r_[0.0, np.geomspace(1e-3 / fast, 60.0 / slow, 4001)]
+    heights = np.abs(value(times))
+    best = int(np.argmax(heights))
+    if best == 0:
+        return 0.0, float(value(0.0))
+    low, high = times[best - 1], times[min(best + 1, len(times) - 1)]
+    found = minimize_scalar(lambda t: -abs(float(value(t))), bounds=(low, high), method="bounded", options={"xatol": 1e-12 * high})
+    return float(found.x), float(value(found.x))

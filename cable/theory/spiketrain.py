@@ -1,0 +1,102 @@
+"""The statistics of one presynaptic spike train: its spectrum over its rate.
+
+With p(ω) the characteristic function of the interval, a stationary renewal train of rate r has the spectrum
+r(1 - |p|²)/|1 - p|² (Bartlett 1963, J R Stat Soc B 25:264; Cox & Lewis 1966; from memory).
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from cable.theory.membrane import check_positive
+from cable.theory.units import PER_MS_PER_HZ
+
+
+@dataclass(frozen=True)
+class SpikeTrain:
+    """A stationary spike train: Poisson, gamma renewal of an order, or Poisson with a dead time.
+
+    Attributes:
+        process: "poisson", "gamma" or "dead time".
+        order: shape of the gamma interval, >= 1 (1 is Poisson).
+        dead_time_ms: time after each spike without another, ms.
+    """
+
+    process: str = "poisson"
+    order: float = 1.0
+    dead_time_ms: float = 0.0
+
+    @classmethod
+    def poisson(cls) -> SpikeTrain:
+        """Independent spikes: a flat spectrum."""
+        return cls()
+
+    @classmethod
+    def gamma(cls, order: float) -> SpikeTrain:
+        """Gamma-distributed intervals.
+
+        Raises:
+            ValueError: order below 1.
+        """
+        check_positive(order, "order")
+        if order < 1:
+            raise ValueError(f"order: expected 1 (Poisson) or more (regular), found {order:g}")
+        return cls("gamma", order=order)
+
+    @classmethod
+    def dead_time(cls, dead_time_ms: float) -> SpikeTrain:
+        """Intervals of a dead time and an exponential rest.
+
+        Raises:
+            ValueError: dead_time_ms is not a finite number above zero.
+        """
+        check_positive(dead_time_ms, "dead_time_ms")
+        return cls("dead time", dead_time_ms=dead_time_ms)
+
+    def check_rate(self, rate_Hz: float) -> None:
+        """Raise ValueError where the dead time leaves no room for the rate."""
+        if rate_Hz * PER_MS_PER_HZ * self.dead_time_ms >= 1:
+            raise ValueError(f"dead_time_ms = {self.dead_time_ms:g} allows rates below {1e3 / self.dead_time_ms:g} Hz, found {rate_Hz:g} Hz")
+
+    def poles_per_ms(self, rate_Hz: float) -> tuple[complex, ...]:
+        """The p > 0 or complex for which the train's spectrum has a pole at iω = -p; those nearest to ω = 0.
+
+        They solve φ(-p) = 1 with φ the Laplace transform of the interval, p ≠ 0: for gamma intervals of order k
+        p = kr(1 - e^{2πij/k}), and the branch point kr; with a dead time D and hazard h, (h - p) e^{-pD}... = h through Lambert's W.
+        """
+        rate = rate_Hz * PER_MS_PER_HZ
+        if self.process == "poisson" or rate == 0:
+            return ()
+        if self.process == "gamma":
+            turns = np.arange(1, max(2, int(self.order // 2) + 1))
+            cut = self.order * rate
+            return (cut, *(cut * (1 - np.exp(2j * np.pi * turns / self.order))).tolist()) if self.order >= 2 else (cut,)
+        from scipy.special import lambertw
+
+        step = rate * self.dead_time_ms / (1 - rate * self.dead_time_ms)
+        branches = np.arange(1, 8)
+        return tuple(((step - lambertw(step * np.exp(step), branches)) / self.dead_time_ms).tolist())
+
+    def spectrum_over_rate(self, omega_per_ms: NDArray[np.float64], rate_Hz: float) -> NDArray[np.float64]:
+        """Two-sided spectrum over the rate at ω (...), rad/ms; 1 for a Poisson train, CV² at ω = 0."""
+        omega = np.asarray(omega_per_ms, dtype=float)
+        rate = rate_Hz * PER_MS_PER_HZ
+        if self.process == "poisson" or rate == 0:
+            return np.ones_like(omega)
+        if self.process == "gamma":
+            return self._gamma(omega, rate)
+        hazard = rate / (1 - rate * self.dead_time_ms)
+        half = 0.5 * omega * self.dead_time_ms
+        # over ω²: 1 + 2hD·sinc(ωD) + h²D²·sinc²(ωD/2)
+        step = hazard * self.dead_time_ms
+        return 1 / (1 + 2 * step * np.sinc(2 * half / np.pi) + step**2 * np.sinc(half / np.pi) ** 2)
+
+    def _gamma(self, omega: NDArray[np.float64], rate: float) -> NDArray[np.float64]:
+        x = omega / (self.order * rate)
+        log_p = -self.order * np.log1p(1j * x)
+        with np.errstate(divide="ignore", invalid="ignore"):
+            value = -np.expm1(2 * log_p.real) / np.abs(np.expm1(log_p)) ** 2
+        return np.where(x < 1e-7, 1 / self.order, value)
