@@ -91,8 +91,13 @@ class Layout:
 
     @cached_property
     def lean_of_length(self) -> Floats:
-        """(E,) the same for what is spread evenly along its axis, to first order in the taper."""
-        return self.lean_of_area * (2 / 3)
+        """(E,) the same for what is spread evenly along its axis."""
+        t = 2 * self.lean_of_area
+        steep = np.abs(t) > 0.1
+        safe = np.where(steep, t, 0.5)
+        closed = (1 + safe) / (2 * safe) * (1 - (1 - safe) * np.arctanh(safe) / safe) - 0.5
+        series = sum(t ** (2 * k + 1) / ((2 * k + 1) * (2 * k + 3)) for k in range(8))
+        return np.where(steep, closed, series)
 
     def inside(self, part: ZonePart) -> NDArray[np.bool_]:
         """(E,) whether each piece lies in a zone whose limits are among the cuts."""

@@ -114,10 +114,14 @@ class OperatingPoint:
             x2 = self.network.resistance_GOhm * self.network.conductance_nS
             share = spread_current(np.asarray(x2, dtype=np.complex128)).real
             force, force_square = still + share * (near + far - 2 * still), mean_square_along(x2, near, far, still)
-            mean, square, node_mean = peak * force, peak**2 * force_square, peak * (reversal - self.deviation_mV)
-            moment = mean * lean + peak * (far - near) / 12
             with np.errstate(divide="ignore", invalid="ignore"):
-                square_lean = lean + np.where(force_square > 0, (far**2 - near**2) / (12 * force_square), 0.0)
+                square_lean = np.where(force_square > 0, (far**2 - near**2) / (12 * force_square), 0.0)
+            # synapses and driving force that lean the same way meet: the mean of their product is larger
+            mean = peak * (force + lean * (far - near))
+            square = peak**2 * force_square * (1 + 12 * lean * square_lean)
+            node_mean = peak * (reversal - self.deviation_mV)
+            moment = peak * (force * lean + (far - near) / 12)
+            square_lean = square_lean + lean
         return Source(
             population=one,
             piece_strength=rate * on_pieces * square,
@@ -137,22 +141,22 @@ class OperatingPoint:
         return uneven
 
     def unevenness(self, omega_per_ms: float) -> Floats:
-        """(E,) size of what is lost by taking a piece as even, relative to the piece's own effect.
+        """(E,) size of what the first moments leave out, relative to the piece's own effect.
 
-        It is the misplaced first moment of admittance (taper) or of noise (driving force), times the
-        electrotonic length that it is misplaced by; it falls with the square of the number of divisions.
+        These are the second moments of taper and driving force times the squared electrotonic length, and the
+        first moments times its cube; either falls with the fourth power of the number of divisions.
         """
         first, last = self.layout.radii_um
         network = self.network
         x2 = network.resistance_GOhm * np.hypot(network.conductance_nS, omega_per_ms * network.capacitance_pF)
-        lost = 0.5 * x2 * np.abs(first - last) / (first + last)
+        slope = np.abs(first - last) / (first + last)
         step = np.abs(self.deviation_mV[1:] - self.deviation_mV[network.parent[1:]])
         for one, (on_pieces, _) in zip(self.model.inputs, self.numbers, strict=True):
             if one.reversal_mV is not None:
                 force = np.abs(one.reversal_mV - self.mean_mV[1:]) + step
                 share = np.divide(step, force, out=np.zeros_like(step), where=force > 0)
-                lost = np.maximum(lost, np.where(on_pieces > 0, share * np.sqrt(x2) / 3, 0.0))
-        return lost
+                slope = np.where(on_pieces > 0, np.maximum(slope, share), slope)
+        return slope * x2 * (slope + np.sqrt(x2))
 
 
 def operating_point(model: CableModel, divide: NDArray[np.int64] | None = None) -> OperatingPoint:
