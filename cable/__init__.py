@@ -15,8 +15,7 @@ from cable.theory.kernel import Kernel
 from cable.theory.membrane import Membrane, MembraneZone
 from cable.theory.spiketrain import SpikeTrain
 from cable.theory.synapse import Placed, SynapticInput
-
-__version__ = "0.1.0"
+from cable.version import __version__
 
 __all__ = [
     "CableModel",
@@ -30,6 +29,7 @@ __all__ = [
     "SiteFluctuations",
     "SpikeTrain",
     "SynapticInput",
+    "__version__",
     "load_scenario",
 ]
 

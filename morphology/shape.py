@@ -104,7 +104,10 @@ def _soma_rule(tree: CellTree, somata: Ints) -> tuple[str, int | None]:
     if somata.size == 1:
         return f"one soma point: an isopotential sphere of radius {radius:.4g} µm", first
     if not offset.any():
-        return f"{somata.size} soma points in one place: one isopotential sphere of radius {radius:.4g} µm", first
+        return (
+            f"{somata.size} soma points in one place: one isopotential sphere of radius {radius:.4g} µm",
+            first,
+        )
     sides = somata[1:]
     if (
         somata.size == 3

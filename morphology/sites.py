@@ -171,7 +171,9 @@ class Site:
         if (self.swc_id is None) == (self.path_um is None):
             raise ValueError("a site needs either swc_id or path_um (with filters such as kinds)")
         if not 0.0 <= self.fraction <= 1.0:
-            raise ValueError(f"fraction: expected 0 to 1 (from the parent to the point), found {self.fraction}")
+            raise ValueError(
+                f"fraction: expected 0 to 1 (from the parent to the point), found {self.fraction}"
+            )
 
     def resolve(self, tree: CellTree) -> Place:
         """The one place of `tree` that this site names.

@@ -47,14 +47,23 @@ class CellTree:
     name: str = ""
 
     def __post_init__(self) -> None:
-        for field, dtype in (("ids", np.int64), ("kinds", np.int64), ("xyz_um", float), ("radius_um", float), ("parent", np.int64)):
+        for field, dtype in (
+            ("ids", np.int64),
+            ("kinds", np.int64),
+            ("xyz_um", float),
+            ("radius_um", float),
+            ("parent", np.int64),
+        ):
             array = np.array(getattr(self, field), dtype=dtype)
             array.setflags(write=False)
             object.__setattr__(self, field, array)
         n = len(self.ids)
         if n == 0:
             raise ValueError("a cell needs at least one point")
-        if not (self.kinds.shape == self.radius_um.shape == self.parent.shape == (n,) and self.xyz_um.shape == (n, 3)):
+        if not (
+            self.kinds.shape == self.radius_um.shape == self.parent.shape == (n,)
+            and self.xyz_um.shape == (n, 3)
+        ):
             raise ValueError("ids, kinds, radius_um and parent must be (N,), xyz_um (N, 3), with one N")
         if not np.isfinite(self.xyz_um).all():
             raise ValueError("a position is not finite")
@@ -184,7 +193,14 @@ class CellTree:
         parent = np.where(self.parent[keep] >= 0, new_row[self.parent[keep]], -1)
         if not keep[self.parent[keep & (self.parent >= 0)]].all():
             raise ValueError("a chosen point's parent is left out")
-        return replace(self, ids=self.ids[keep], kinds=self.kinds[keep], xyz_um=self.xyz_um[keep], radius_um=self.radius_um[keep], parent=parent)
+        return replace(
+            self,
+            ids=self.ids[keep],
+            kinds=self.kinds[keep],
+            xyz_um=self.xyz_um[keep],
+            radius_um=self.radius_um[keep],
+            parent=parent,
+        )
 
     def without(self, kinds: Iterable[str | int]) -> CellTree:
         """The tree without the points of these kinds and without all that hangs on them.
@@ -230,9 +246,16 @@ class CellTree:
 
         graph = networkx.DiGraph(name=self.name)
         for row, swc_id in enumerate(self.ids.tolist()):
-            graph.add_node(swc_id, kind=kind_name(self.kinds[row]), xyz_um=tuple(self.xyz_um[row]), radius_um=self.radius_um[row])
+            graph.add_node(
+                swc_id,
+                kind=kind_name(self.kinds[row]),
+                xyz_um=tuple(self.xyz_um[row]),
+                radius_um=self.radius_um[row],
+            )
         for row in range(1, len(self)):
-            graph.add_edge(int(self.ids[self.parent[row]]), int(self.ids[row]), length_um=self.edge_length_um[row])
+            graph.add_edge(
+                int(self.ids[self.parent[row]]), int(self.ids[row]), length_um=self.edge_length_um[row]
+            )
         return graph
 
 

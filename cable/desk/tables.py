@@ -87,7 +87,7 @@ def write_csv(table: Table, stream: IO[str]) -> None:
 
 def _cells(column: list[Any]) -> list[Any]:
     """A column as the csv module writes it: floats in their shortest exact form, NaN empty, text inert."""
-    return ["" if v is None else inert(v) if type(v) is str else v if v == v else "" for v in column]  # noqa: PLR0124 - NaN
+    return ["" if v is None else inert(v) if type(v) is str else v if v == v else "" for v in column]
 
 
 def inert(text: str) -> str:

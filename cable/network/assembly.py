@@ -40,7 +40,10 @@ def passive(layout: Layout, membrane: Membrane, parts: list[ZonePart]) -> Passiv
             if value is not None:
                 pieces[name][inside] = value
                 nodes[name][spheres] = value
-    area, sphere = (area * values["spine_factor"] for area, values in ((layout.area_um2, pieces), (layout.sphere_area_um2, nodes)))
+    area, sphere = (
+        area * values["spine_factor"]
+        for area, values in ((layout.area_um2, pieces), (layout.sphere_area_um2, nodes))
+    )
     return Passive(
         resistance_GOhm=resistivity_GOhm_um(pieces["axial_resistivity_ohm_cm"]) * layout.axial_per_um,
         leak_nS=area * conductance_nS_per_um2(pieces["resistance_ohm_cm2"]),
@@ -52,7 +55,9 @@ def passive(layout: Layout, membrane: Membrane, parts: list[ZonePart]) -> Passiv
     )
 
 
-def synapse_numbers(layout: Layout, population: SynapticInput, part: ZonePart | None, places: list[Place]) -> tuple[Floats, Floats]:
+def synapse_numbers(
+    layout: Layout, population: SynapticInput, part: ZonePart | None, places: list[Place]
+) -> tuple[Floats, Floats]:
     """How many synapses of a population sit on each piece (E,) and at each node (E + 1,).
 
     Args:

@@ -127,16 +127,23 @@ def variances(factors: Factors, z: Impedances, self_noise: Floats, cross_noise: 
     w[plan.node] = self_noise
     cross = np.empty((plan.edges, width), dtype=np.complex128)
     cross[plan.edge] = cross_noise
-    folded = [_fold_noise(step, factors.to_parent[step.nodes], a_q, w, cross) for step, a_q in zip(plan.rounds, factors.to_child, strict=True)]
+    folded = [
+        _fold_noise(step, factors.to_parent[step.nodes], a_q, w, cross)
+        for step, a_q in zip(plan.rounds, factors.to_child, strict=True)
+    ]
     p = w
     root = factors.inverse[-1]
     p[-1] *= root.real**2 + root.imag**2
-    for step, a_q, (with_p, with_q) in zip(reversed(plan.rounds), reversed(factors.to_child), reversed(folded), strict=True):
+    for step, a_q, (with_p, with_q) in zip(
+        reversed(plan.rounds), reversed(factors.to_child), reversed(folded), strict=True
+    ):
         _unfold_noise(step, factors, a_q, z, with_p, with_q, p, cross)
     return p[plan.node]
 
 
-def _fold_noise(step: Round, a_p: Complexes, a_q: Complexes, w: Floats, cross: Complexes) -> tuple[Complexes, Complexes]:
+def _fold_noise(
+    step: Round, a_p: Complexes, a_q: Complexes, w: Floats, cross: Complexes
+) -> tuple[Complexes, Complexes]:
     """Fold the noise of a round's points into their neighbours; returns E[I'_p I_m*] and E[I'_q I_m*]."""
     own, up, down = w[step.nodes], cross[step.to_parent], cross[step.to_child]
     chain = len(a_q)
@@ -153,7 +160,14 @@ def _fold_noise(step: Round, a_p: Complexes, a_q: Complexes, w: Floats, cross: C
 
 
 def _unfold_noise(
-    step: Round, factors: Factors, a_q: Complexes, z: Impedances, with_p: Complexes, with_q: Complexes, p: Floats, cross: Complexes
+    step: Round,
+    factors: Factors,
+    a_q: Complexes,
+    z: Impedances,
+    with_p: Complexes,
+    with_q: Complexes,
+    p: Floats,
+    cross: Complexes,
 ) -> None:
     """Covariances of a round's points from those of their neighbours.
 
@@ -170,7 +184,9 @@ def _unfold_noise(
         u_q = z_across * with_p[:chain] + z.point[step.child] * with_q
         m_p[:chain] += a_q * p_across
         u_m[:chain] += a_q * u_q
-        q_m = (a_p[:chain] * p_across.conj() + a_q * p[step.child] + inverse[:chain] * u_q.conj()).conj()  # E[V_q V_m*]
+        q_m = (
+            a_p[:chain] * p_across.conj() + a_q * p[step.child] + inverse[:chain] * u_q.conj()
+        ).conj()  # E[V_q V_m*]
         cross[step.to_child] = q_m
     u_m += a_p * u_p
     m_p += inverse * u_p.conj()

@@ -56,7 +56,9 @@ class Network:
     def _near_ends(self) -> sparse.csr_array:
         """(E + 1, E) of ones: adds to each node what the pieces that begin there give to their near ends."""
         pieces = np.arange(len(self.parent) - 1)
-        return sparse.csr_array((np.ones(len(pieces)), (self.parent[1:], pieces)), shape=(len(self.parent), len(pieces)))
+        return sparse.csr_array(
+            (np.ones(len(pieces)), (self.parent[1:], pieces)), shape=(len(self.parent), len(pieces))
+        )
 
     def to_nodes(self, near: NDArray, far: NDArray) -> NDArray:
         """Sum at the nodes (E + 1, F) of what each piece gives to its near end and to its far end (E, F)."""
@@ -117,7 +119,9 @@ class Response:
         even, lean = piece_strength[:, None] * self.form.noise_self, 3 * piece_lean[:, None]
         self_noise = self.network.to_nodes(even * (1 - lean), even * (1 + lean))
         self_noise += node_strength[:, None]
-        return variances(self.factors, self.impedances, self_noise, piece_strength[:, None] * self.form.noise_cross)
+        return variances(
+            self.factors, self.impedances, self_noise, piece_strength[:, None] * self.form.noise_cross
+        )
 
     def voltages(self, piece_current: Floats, piece_moment: Floats, node_current: Floats) -> Complexes:
         """(E + 1, F) voltages for currents in step.

@@ -148,7 +148,11 @@ class Fluctuations:
             return values[parent] + share * (values[place.row] - values[parent])
 
         on_cable = tree.shape.far[place.row] > tree.shape.near[place.row]
-        radius = tree.shape.radius_at(np.full(len(tree), share))[place.row] if on_cable and share < 1 else tree.radius_um[place.row]
+        radius = (
+            tree.shape.radius_at(np.full(len(tree), share))[place.row]
+            if on_cable and share < 1
+            else tree.radius_um[place.row]
+        )
         return SiteFluctuations(
             name=name,
             swc_id=int(tree.ids[place.row]),
@@ -160,7 +164,9 @@ class Fluctuations:
             mean_mV=float(self._mean[at]),
             sd_mV=math.sqrt(self._variance[at]),
             variance_mV2=float(self._variance[at]),
-            variance_by_input_mV2={one.name: float(self._by_input[at, k]) for k, one in enumerate(self.model.inputs)},
+            variance_by_input_mV2={
+                one.name: float(self._by_input[at, k]) for k, one in enumerate(self.model.inputs)
+            },
             correlation_time_ms=float(self._correlation_time[at]),
             input_resistance_MOhm=float(self._resistance[at]),
             upcrossing_Hz=None if self._upcrossing is None else float(self._upcrossing[at]),
@@ -172,7 +178,9 @@ def fluctuations(model: CableModel, tolerance: float = 1e-9) -> Fluctuations:
     refined = model.refined
     point = refined.point
     layout = point.layout
-    nodes = np.r_[layout.row_node, [layout.node_at(place) for place in model.site_places.values()]].astype(np.int64)
+    nodes = np.r_[layout.row_node, [layout.node_at(place) for place in model.site_places.values()]].astype(
+        np.int64
+    )
     power = falls_as(point)[nodes]
     rough = (power <= DERIVATIVE_FINITE_ABOVE) & (power < np.inf)
     wants_derivative = model.threshold_mV is not None
@@ -225,7 +233,11 @@ def slowest_rate_per_ms(point: OperatingPoint) -> float:
 
 def analytic_strip(point: OperatingPoint, omega0: float) -> float:
     """Half width of the strip in u = asinh(ω/ω₀) that no pole of the kernels or spike trains enters."""
-    poles = [1j * pole / omega0 for one in point.model.inputs for pole in (*one.kernel.poles_per_ms, *one.spike_train.poles_per_ms(one.rate_Hz))]
+    poles = [
+        1j * pole / omega0
+        for one in point.model.inputs
+        for pole in (*one.kernel.poles_per_ms, *one.spike_train.poles_per_ms(one.rate_Hz))
+    ]
     return min([math.pi / 2, *(abs(cmath.asinh(pole).imag) for pole in poles)])
 
 

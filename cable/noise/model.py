@@ -49,12 +49,17 @@ class CableModel:
     def __post_init__(self) -> None:
         object.__setattr__(self, "inputs", tuple(self.inputs))
         object.__setattr__(self, "sites", tuple(self.sites))
-        for key, names in (("input", [i.name for i in self.inputs]), ("site", ["soma", *(s.name for s in self.sites)])):
+        for key, names in (
+            ("input", [i.name for i in self.inputs]),
+            ("site", ["soma", *(s.name for s in self.sites)]),
+        ):
             for index, name in enumerate(names):
                 if name in names[:index]:
                     place = index - 1 if key == "site" else index
                     extra = " (soma is always a site)" if key == "site" and name == "soma" else ""
-                    raise ModelError(f"{key}[{place}].name", f"the name {name!r} is used twice{extra}; choose another")
+                    raise ModelError(
+                        f"{key}[{place}].name", f"the name {name!r} is used twice{extra}; choose another"
+                    )
         self.membrane_parts, self.input_parts, self.input_places, self.site_places  # noqa: B018 - checks them now
 
     def _part(self, zone: Zone, key: str) -> ZonePart:
@@ -63,7 +68,9 @@ class CableModel:
         except PlaceError as error:
             raise ModelError(f"{key}.subtree_of", str(error)) from None
         if part.empty:
-            raise ModelError(key, "the zone selects nothing of this cell; widen its ranges or check its kinds")
+            raise ModelError(
+                key, "the zone selects nothing of this cell; widen its ranges or check its kinds"
+            )
         return part
 
     def _place(self, site: Site, key: str) -> Place:
@@ -75,7 +82,9 @@ class CableModel:
     @cached_property
     def membrane_parts(self) -> list[ZonePart]:
         """The membrane's zones, resolved."""
-        return [self._part(zone.where, f"membrane.zone[{k}].where") for k, zone in enumerate(self.membrane.zones)]
+        return [
+            self._part(zone.where, f"membrane.zone[{k}].where") for k, zone in enumerate(self.membrane.zones)
+        ]
 
     @cached_property
     def input_parts(self) -> list[ZonePart | None]:
@@ -85,14 +94,20 @@ class CableModel:
             part = None if one.where is None else self._part(one.where, f"input[{k}].where")
             if part is not None and not one.by_area and not (part.high > part.low).any():
                 density = "density_per_um2" if one.count is None else 'spread = "area"'
-                raise ModelError(f"input[{k}].where", f"the zone holds only a one-point soma, which has no length; use {density}")
+                raise ModelError(
+                    f"input[{k}].where",
+                    f"the zone holds only a one-point soma, which has no length; use {density}",
+                )
             parts.append(part)
         return parts
 
     @cached_property
     def input_places(self) -> list[list[Place]]:
         """Each input's point synapses, resolved."""
-        return [[self._place(p.site, f"input[{k}].at[{j}]") for j, p in enumerate(one.at)] for k, one in enumerate(self.inputs)]
+        return [
+            [self._place(p.site, f"input[{k}].at[{j}]") for j, p in enumerate(one.at)]
+            for k, one in enumerate(self.inputs)
+        ]
 
     @cached_property
     def site_places(self) -> dict[str, Place]:

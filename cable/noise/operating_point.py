@@ -53,16 +53,23 @@ class Source:
     def colour(self, omega_per_ms: Floats) -> Floats:
         """(F,) |k̂(ω)|² times the spectrum of one spike train over its rate, ms²."""
         one = self.population
-        return np.abs(one.kernel.transform(omega_per_ms)) ** 2 * one.spike_train.spectrum_over_rate(omega_per_ms, one.rate_Hz)
+        return np.abs(one.kernel.transform(omega_per_ms)) ** 2 * one.spike_train.spectrum_over_rate(
+            omega_per_ms, one.rate_Hz
+        )
 
     def spectrum(self, response: Response) -> Floats:
         """(E + 1, F) two-sided spectrum of the voltage that this population makes at every node, mV²·ms."""
         correlation = self.population.correlation
         spectrum = np.zeros((len(self.node_strength), len(response.omega_per_ms)))
         if correlation < 1:
-            spectrum += (1 - correlation) * response.spectra(self.piece_strength, self.piece_lean, self.node_strength)
+            spectrum += (1 - correlation) * response.spectra(
+                self.piece_strength, self.piece_lean, self.node_strength
+            )
         if correlation > 0:
-            spectrum += correlation * np.abs(response.voltages(self.piece_amplitude, self.piece_moment, self.node_amplitude)) ** 2
+            spectrum += (
+                correlation
+                * np.abs(response.voltages(self.piece_amplitude, self.piece_moment, self.node_amplitude)) ** 2
+            )
         return spectrum * self.colour(response.omega_per_ms)
 
 
@@ -97,7 +104,9 @@ class OperatingPoint:
     @cached_property
     def sources(self) -> tuple[Source, ...]:
         """The inputs as current noise around this mean state."""
-        return tuple(self._source(one, *numbers) for one, numbers in zip(self.model.inputs, self.numbers, strict=True))
+        return tuple(
+            self._source(one, *numbers) for one, numbers in zip(self.model.inputs, self.numbers, strict=True)
+        )
 
     def _source(self, one: SynapticInput, on_pieces: Floats, at_nodes: Floats) -> Source:
         rate = one.rate_per_ms
@@ -109,11 +118,17 @@ class OperatingPoint:
         else:
             assert one.conductance_nS is not None and one.reversal_mV is not None
             peak, reversal = one.conductance_nS, one.reversal_mV - self.reference_mV
-            near, far = reversal - self.deviation_mV[self.network.parent[1:]], reversal - self.deviation_mV[1:]
+            near, far = (
+                reversal - self.deviation_mV[self.network.parent[1:]],
+                reversal - self.deviation_mV[1:],
+            )
             still = reversal - self.far_mV
             x2 = self.network.resistance_GOhm * self.network.conductance_nS
             share = spread_current(np.asarray(x2, dtype=np.complex128)).real
-            force, force_square = still + share * (near + far - 2 * still), mean_square_along(x2, near, far, still)
+            force, force_square = (
+                still + share * (near + far - 2 * still),
+                mean_square_along(x2, near, far, still),
+            )
             with np.errstate(divide="ignore", invalid="ignore"):
                 square_lean = np.where(force_square > 0, (far**2 - near**2) / (12 * force_square), 0.0)
             # synapses and driving force that lean the same way meet: the mean of their product is larger
@@ -193,4 +208,6 @@ def operating_point(model: CableModel, divide: NDArray[np.int64] | None = None) 
         tilt_nS=2 * share * along * (layout.lean_of_length - layout.lean_of_area),
     )
     deviation = network.at(np.zeros(1)).voltages(drive, moment, node_drive)[:, 0].real
-    return OperatingPoint(model, layout, cell, network, tuple(numbers), reference, deviation, drive / conductance)
+    return OperatingPoint(
+        model, layout, cell, network, tuple(numbers), reference, deviation, drive / conductance
+    )

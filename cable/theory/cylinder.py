@@ -65,7 +65,9 @@ def _terms_for(largest: float) -> int:
     return max(4, int(np.ceil(38.0 / np.log(np.pi**2 / max(largest, 1e-300)))) + 1)
 
 
-def _sum_series(name: str, terms: int, real: Floats, imag: Floats, modulus2: Floats) -> tuple[Complexes, Floats]:
+def _sum_series(
+    name: str, terms: int, real: Floats, imag: Floats, modulus2: Floats
+) -> tuple[Complexes, Floats]:
     """The series at z = real + i·imag and its imaginary part over `imag` (synthetic division by t² - 2 real t + |z|²)."""
     coefficients = _series(name, terms)
     twice = 2 * real

@@ -66,7 +66,12 @@ class Kernel:
         """
         check_positive(alpha_ms, "alpha_ms")
         rate = 1 / alpha_ms
-        return cls((Term(math.e * rate, 1, rate),), (math.e * alpha_ms,), (rate, rate), f"t/{alpha_ms!r}*exp(1 - t/{alpha_ms!r})")
+        return cls(
+            (Term(math.e * rate, 1, rate),),
+            (math.e * alpha_ms,),
+            (rate, rate),
+            f"t/{alpha_ms!r}*exp(1 - t/{alpha_ms!r})",
+        )
 
     @classmethod
     def two_exponential(cls, rise_ms: float, decay_ms: float) -> Kernel:
@@ -78,7 +83,9 @@ class Kernel:
         check_positive(rise_ms, "rise_ms")
         check_positive(decay_ms, "decay_ms")
         if not rise_ms < decay_ms:
-            raise ValueError(f"rise_ms ({rise_ms:g}) must be below decay_ms ({decay_ms:g}); for equal times use alpha_ms")
+            raise ValueError(
+                f"rise_ms ({rise_ms:g}) must be below decay_ms ({decay_ms:g}); for equal times use alpha_ms"
+            )
         gap = 1 / rise_ms - 1 / decay_ms
         log_ratio = math.log1p((decay_ms - rise_ms) / rise_ms)
         scale = math.exp(log_ratio / gap / decay_ms) / -math.expm1(-log_ratio)
@@ -102,7 +109,9 @@ class Kernel:
         """The kernel at times t_ms (...), 0 before t = 0."""
         t = np.asarray(t_ms, dtype=float)
         after = np.maximum(t, 0.0)
-        total = sum((term.factor * after**term.power * np.exp(-term.rate_per_ms * after)).real for term in self.terms)
+        total = sum(
+            (term.factor * after**term.power * np.exp(-term.rate_per_ms * after)).real for term in self.terms
+        )
         return np.where(t >= 0, total, 0.0)
 
     def transform(self, omega_per_ms: NDArray[np.float64] | float) -> NDArray[np.complex128]:
@@ -164,5 +173,7 @@ def peak_of(value, poles_per_ms: tuple[complex, ...]) -> tuple[float, float]:
     if best == 0:
         return 0.0, float(value(0.0))
     low, high = times[best - 1], times[min(best + 1, len(times) - 1)]
-    found = minimize_scalar(lambda t: -abs(float(value(t))), bounds=(low, high), method="bounded", options={"xatol": 1e-12 * high})
+    found = minimize_scalar(
+        lambda t: -abs(float(value(t))), bounds=(low, high), method="bounded", options={"xatol": 1e-12 * high}
+    )
     return float(found.x), float(value(found.x))

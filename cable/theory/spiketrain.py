@@ -59,7 +59,9 @@ class SpikeTrain:
     def check_rate(self, rate_Hz: float) -> None:
         """Raise ValueError where the dead time leaves no room for the rate."""
         if rate_Hz * PER_MS_PER_HZ * self.dead_time_ms >= 1:
-            raise ValueError(f"dead_time_ms = {self.dead_time_ms:g} allows rates below {1e3 / self.dead_time_ms:g} Hz, found {rate_Hz:g} Hz")
+            raise ValueError(
+                f"dead_time_ms = {self.dead_time_ms:g} allows rates below {1e3 / self.dead_time_ms:g} Hz, found {rate_Hz:g} Hz"
+            )
 
     def poles_per_ms(self, rate_Hz: float) -> tuple[complex, ...]:
         """The p > 0 or complex for which the train's spectrum has a pole at iω = -p; those nearest to ω = 0.
@@ -73,7 +75,11 @@ class SpikeTrain:
         if self.process == "gamma":
             turns = np.arange(1, max(2, int(self.order // 2) + 1))
             cut = self.order * rate
-            return (cut, *(cut * (1 - np.exp(2j * np.pi * turns / self.order))).tolist()) if self.order >= 2 else (cut,)
+            return (
+                (cut, *(cut * (1 - np.exp(2j * np.pi * turns / self.order))).tolist())
+                if self.order >= 2
+                else (cut,)
+            )
         from scipy.special import lambertw
 
         step = rate * self.dead_time_ms / (1 - rate * self.dead_time_ms)
