@@ -21,6 +21,7 @@ from numpy.typing import NDArray
 Floats = NDArray[np.float64]
 
 SAFETY = 10.0
+USUAL = 100.0  # amplitude A for which the first step is chosen; seen: 4 for one pole, up to 60 on real cells
 PLAUSIBLE = 1e3  # an amplitude A beyond this says that the strip is narrower than thought
 BLOCK = 8  # frequencies handled at once: a block of a few thousand points stays in the processor's cache
 MAX_HALVINGS = 4
@@ -48,8 +49,8 @@ class Integral:
 
 
 def first_step(tolerance: float, strip: float) -> float:
-    """The step h for which the certificate should come out below `tolerance`, for amplitudes A up to about 8."""
-    return 2 * math.pi * strip / math.log(8 * SAFETY / tolerance)
+    """The step h for which the certificate should come out below `tolerance` for usual amplitudes A."""
+    return 2 * math.pi * strip / math.log(USUAL * SAFETY / tolerance)
 
 
 def _trapezoid_error(difference: float, step: float, strip: float) -> float:
