@@ -206,7 +206,10 @@ def fluctuations(model: CableModel, tolerance: float = 1e-9) -> Fluctuations:
     if count:
         omega0 = slowest_rate_per_ms(point)
         reach = _range_u(point, power, wants_derivative, tolerance)
-        result = integrate(spectra, scale, omega0, tolerance, reach, analytic_strip(point, omega0))
+        crowded = any(one.spike_train.dead_time_ms > 0 for one in model.inputs)
+        result = integrate(
+            spectra, scale, omega0, tolerance, reach, analytic_strip(point, omega0), crowded
+        )
         by_input, error, used = result.value[:, :count], result.relative_error, len(result.omega_per_ms)
         derivative = np.where(rough, np.nan, result.value[:, -1]) if wants_derivative else None
     else:
