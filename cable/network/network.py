@@ -18,11 +18,12 @@ from scipy import sparse
 
 from cable.network.elimination import Factors, Impedances, eliminate, impedances, solve, variances
 from cable.network.plan import Plan, plan_elimination
-from cable.theory.cylinder import CylinderForm, cylinder_form
+from cable.theory.cylinder import cylinder_form
 
 Floats = NDArray[np.float64]
 Complexes = NDArray[np.complex128]
 Ints = NDArray[np.int64]
+ROWS = 800  # pieces at a time: their arrays stay in cache, and below the size that malloc maps anew
 
 
 @dataclass(frozen=True, eq=False)
@@ -69,16 +70,24 @@ class Network:
     def at(self, omega_per_ms: Floats) -> Response:
         """The network eliminated at the angular frequencies ω (F,), rad/ms."""
         omega = np.asarray(omega_per_ms, dtype=float)
-        x2 = np.empty((len(self.resistance_GOhm), len(omega)), dtype=np.complex128)
-        x2.real = (self.resistance_GOhm * self.conductance_nS)[:, None]
-        x2.imag = (self.resistance_GOhm * self.capacitance_pF)[:, None] * omega
-        form = cylinder_form(x2)
-        axial = (1 / self.resistance_GOhm)[:, None]
-        even, uneven = form.shunt * axial, form.shunt * (2 * self.lean[:, None] * axial)
-        uneven += self.tilt_nS[:, None]
-        shunt = self.to_nodes(even - uneven, even + uneven)
+        shape = len(self.resistance_GOhm), len(omega)
+        near, far, coupling, share = (np.empty(shape, dtype=np.complex128) for _ in range(4))
+        noise_self, noise_cross = np.empty(shape), np.empty(shape)
+        for start in range(0, shape[0], ROWS):
+            rows = slice(start, start + ROWS)
+            resistance = self.resistance_GOhm[rows, None]
+            x2 = resistance * (self.conductance_nS[rows, None] + 1j * omega * self.capacitance_pF[rows, None])
+            form = cylinder_form(x2)
+            coupling[rows] = form.coupling / resistance
+            even = form.shunt / resistance
+            uneven = even * (2 * self.lean[rows, None]) + self.tilt_nS[rows, None]
+            near[rows], far[rows] = even - uneven, even + uneven
+            noise_self[rows], noise_cross[rows] = form.noise_self, form.noise_cross
+            share[rows] = form.shunt / x2
+        shunt = self.to_nodes(near, far)
         shunt += self.node_conductance_nS[:, None] + 1j * omega * self.node_capacitance_pF[:, None]
-        return Response(self, omega, x2, form, eliminate(self.plan, shunt, form.coupling * axial))
+        factors = eliminate(self.plan, shunt, coupling)
+        return Response(self, omega, noise_self, noise_cross, share, factors)
 
     @property
     def slowest_rate_per_ms(self) -> float:
@@ -91,12 +100,20 @@ class Network:
 
 @dataclass(frozen=True, eq=False)
 class Response:
-    """A network at one block of F frequencies."""
+    """A network at one block of F frequencies.
+
+    Attributes:
+        noise_self, noise_cross: (E, F) covariances of the noise that a piece injects at its ends, over its own
+            (see `cable.theory.cylinder.CylinderForm`).
+        share: (E, F) tanh(x/2)/x, what each end gets of an evenly spread current.
+        factors: the eliminated network.
+    """
 
     network: Network
     omega_per_ms: Floats
-    x2: Complexes
-    form: CylinderForm
+    noise_self: Floats
+    noise_cross: Floats
+    share: Complexes
     factors: Factors
 
     @cached_property
@@ -108,20 +125,18 @@ class Response:
         """(E + 1, F) input impedance of each node, GΩ."""
         return self.impedances.point[self.network.plan.node]
 
-    def spectra(self, piece_strength: Floats, piece_lean: Floats, node_strength: Floats) -> Floats:
+    def spectra(self, piece_strength: Floats, piece_moment: Floats, node_strength: Floats) -> Floats:
         """(E + 1, F) voltage spectra for independent white current sources.
 
         Args:
-            piece_strength: (E,) spectrum of the current of each piece, spread over it, white in space.
-            piece_lean: (E,) centroid of that spectrum along the piece.
-            node_strength: (E + 1,) spectrum of the currents at nodes.
+            piece_strength: (E, 1 or F) spectrum of the current of each piece, spread over it, white in space.
+            piece_moment: (E, 1 or F) its first moment along the piece, strength times centroid.
+            node_strength: (E + 1, 1 or F) spectrum of the currents at nodes.
         """
-        even, lean = piece_strength[:, None] * self.form.noise_self, 3 * piece_lean[:, None]
-        self_noise = self.network.to_nodes(even * (1 - lean), even * (1 + lean))
-        self_noise += node_strength[:, None]
-        return variances(
-            self.factors, self.impedances, self_noise, piece_strength[:, None] * self.form.noise_cross
-        )
+        own, uneven = self.noise_self, 3 * piece_moment
+        self_noise = self.network.to_nodes(own * (piece_strength - uneven), own * (piece_strength + uneven))
+        self_noise += node_strength
+        return variances(self.factors, self.impedances, self_noise, piece_strength * self.noise_cross)
 
     def voltages(self, piece_current: Floats, piece_moment: Floats, node_current: Floats) -> Complexes:
         """(E + 1, F) voltages for currents in step.
@@ -131,10 +146,8 @@ class Response:
             piece_moment: (E,) its first moment, current times centroid.
             node_current: (E + 1,) currents at nodes.
         """
-        tiny = np.abs(self.x2) < 1e-200
-        share = np.where(tiny, 0.5, self.form.shunt / np.where(tiny, 1.0, self.x2))
         near, far = piece_current - 2 * piece_moment, piece_current + 2 * piece_moment
-        current = self.network.to_nodes(near[:, None] * share, far[:, None] * share)
+        current = self.network.to_nodes(near[:, None] * self.share, far[:, None] * self.share)
         current += node_current[:, None]
         return solve(self.factors, current)
 

@@ -15,6 +15,7 @@ from numpy.typing import NDArray
 from scipy import sparse
 
 Ints = NDArray[np.int64]
+LARGEST = 800  # points in one round: its arrays stay in cache, and below the size that malloc maps anew each time
 
 
 @dataclass(frozen=True, eq=False)
@@ -96,11 +97,31 @@ def plan_elimination(parent: Ints) -> Plan:
         child = only_child[links]
         bridge = np.arange(edge_count, edge_count + len(links))
         edge_count += len(links)
-        found.append(_Pick(gone, above[gone], child, edge_above[gone], edge_above[child], bridge))
+        whole = _Pick(gone, above[gone], child, edge_above[gone], edge_above[child], bridge)
+        found += _slices(whole)
         children -= np.bincount(above[tips], minlength=n)
         above[child], edge_above[child] = above[links], bridge
         alive = alive[~chosen]
     return _numbered(n, edge_count, found)
+
+
+def _slices(pick: _Pick) -> list[_Pick]:
+    """The same points in rounds of at most `LARGEST`."""
+    chain = len(pick.child)
+    slices = []
+    for start in range(0, len(pick.gone), LARGEST):
+        points, links = slice(start, start + LARGEST), slice(min(start, chain), min(start + LARGEST, chain))
+        slices.append(
+            _Pick(
+                pick.gone[points],
+                pick.parent[points],
+                pick.child[links],
+                pick.up[points],
+                pick.down[links],
+                pick.bridge[links],
+            )
+        )
+    return slices
 
 
 def _odd_depth(alive: Ints, above: Ints) -> NDArray[np.bool_]:

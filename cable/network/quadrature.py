@@ -23,7 +23,7 @@ Floats = NDArray[np.float64]
 SAFETY = 10.0
 USUAL = 100.0  # amplitude A for which the first step is chosen; seen: 4 for one pole, up to 60 on real cells
 PLAUSIBLE = 1e3  # an amplitude A beyond this says that the strip is narrower than thought
-BLOCK = 8  # frequencies handled at once: a block of a few thousand points stays in the processor's cache
+BLOCK = 10  # frequencies handled at once: a block of a few thousand points stays in the processor's cache
 MAX_HALVINGS = 6
 MAX_U = 120.0
 

@@ -37,7 +37,7 @@ class Source:
     Attributes:
         population: the synapses.
         piece_strength, node_strength: (E,), (E + 1,) sums of rate·amplitude² over the synapses, pA²/ms.
-        piece_lean: (E,) centroid of that strength along the piece.
+        piece_lean: (E,) centroid of that strength along the piece, from its middle.
         piece_amplitude, node_amplitude: (E,), (E + 1,) sums of √rate·amplitude, pA/√ms.
         piece_moment: (E,) first moment of the amplitude along the piece.
     """
@@ -59,18 +59,27 @@ class Source:
 
     def spectrum(self, response: Response) -> Floats:
         """(E + 1, F) two-sided spectrum of the voltage that this population makes at every node, mV²·ms."""
-        correlation = self.population.correlation
-        spectrum = np.zeros((len(self.node_strength), len(response.omega_per_ms)))
-        if correlation < 1:
-            spectrum += (1 - correlation) * response.spectra(
-                self.piece_strength, self.piece_lean, self.node_strength
-            )
+        return total_spectrum((self,), response)
+
+
+def total_spectrum(sources: tuple[Source, ...], response: Response) -> Floats:
+    """(E + 1, F) two-sided voltage spectrum of independent populations together, in one sweep, mV²·ms."""
+    omega = response.omega_per_ms
+    pieces, nodes = len(response.network.resistance_GOhm), len(response.network.parent)
+    strength, moment, at_nodes = np.zeros((pieces, 1)), np.zeros((pieces, 1)), np.zeros((nodes, 1))
+    in_step = np.zeros((nodes, len(omega)))
+    for source in sources:
+        correlation, colour = source.population.correlation, source.colour(omega)
+        alone = source.piece_strength[:, None] * ((1 - correlation) * colour)
+        strength = strength + alone
+        moment = moment + alone * source.piece_lean[:, None]
+        at_nodes = at_nodes + source.node_strength[:, None] * ((1 - correlation) * colour)
         if correlation > 0:
-            spectrum += (
-                correlation
-                * np.abs(response.voltages(self.piece_amplitude, self.piece_moment, self.node_amplitude)) ** 2
-            )
-        return spectrum * self.colour(response.omega_per_ms)
+            voltage = response.voltages(source.piece_amplitude, source.piece_moment, source.node_amplitude)
+            in_step += correlation * colour * np.abs(voltage) ** 2
+    if not strength.any() and not at_nodes.any():
+        return in_step
+    return response.spectra(strength, moment, at_nodes) + in_step
 
 
 @dataclass(frozen=True, eq=False)

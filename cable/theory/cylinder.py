@@ -119,20 +119,8 @@ def cylinder_form(x2: Complexes) -> CylinderForm:
     Exact to round-off for |x| from 0 to beyond 1e3 and for real x² (zero frequency).
     The first axis may mix short and long cylinders.
     """
-    largest = np.abs(x2.real) + np.abs(x2.imag)
-    short = largest <= SERIES_BELOW
-    if short.all():
-        return _small(x2)
-    rows = short.reshape(len(x2), -1).all(axis=1)
-    if not rows.any():
-        return _mixed(x2, short)
-    parts = _small(x2[rows]), _mixed(x2[~rows], short[~rows])
-    merged = []
-    for one, other in zip(*parts, strict=True):
-        whole = np.empty(x2.shape, dtype=one.dtype)
-        whole[rows], whole[~rows] = one, other
-        merged.append(whole)
-    return CylinderForm(*merged)
+    short = np.abs(x2.real) + np.abs(x2.imag) <= SERIES_BELOW
+    return _small(x2) if short.all() else _mixed(x2, short)
 
 
 def _mixed(x2: Complexes, short: NDArray[np.bool_]) -> CylinderForm:
