@@ -23,7 +23,7 @@ from cable.theory.cylinder import cylinder_form
 Floats = NDArray[np.float64]
 Complexes = NDArray[np.complex128]
 Ints = NDArray[np.int64]
-ROWS = 800  # pieces at a time: their arrays stay in cache, and below the size that malloc maps anew
+ROWS = 1600  # pieces at a time: their arrays stay in cache, and below the size that malloc maps anew
 
 
 @dataclass(frozen=True, eq=False)

@@ -15,7 +15,7 @@ from numpy.typing import NDArray
 from scipy import sparse
 
 Ints = NDArray[np.int64]
-LARGEST = 800  # points in one round: its arrays stay in cache, and below the size that malloc maps anew each time
+LARGEST = 1600  # points in one round: its arrays stay in cache, and below the size that malloc maps anew each time
 
 
 @dataclass(frozen=True, eq=False)

@@ -23,7 +23,7 @@ Floats = NDArray[np.float64]
 SAFETY = 10.0
 USUAL = 100.0  # amplitude A for which the first step is chosen; seen: 4 for one pole, up to 60 on real cells
 PLAUSIBLE = 1e3  # an amplitude A beyond this says that the strip is narrower than thought
-BLOCK = 10  # frequencies handled at once: a block of a few thousand points stays in the processor's cache
+BLOCK = 10  # frequencies handled at once
 MAX_HALVINGS = 6
 MAX_U = 120.0
 
@@ -39,11 +39,13 @@ class Integral:
     Attributes:
         value: the integrals, of the shape that the functions have.
         relative_error: the certified error, at most, relative to `scale` where one was given.
+        at_zero: the functions' values at ω = 0.
         omega_per_ms, weights: (M,) the nodes used and what each counts.
     """
 
     value: Floats
     relative_error: float
+    at_zero: Floats
     omega_per_ms: Floats
     weights: Floats
 
@@ -104,7 +106,7 @@ def integrate(
             error = left_out + (SAFETY * difference if crowded else _trapezoid_error(difference, step, strip))
             if error <= tolerance:
                 omega, weights = rule.nodes(step, last)
-                return Integral(total, error, omega, weights)
+                return Integral(total, error, rule.at_zero, omega, weights)
             step, first_guess_u = step / 2, last * step
     raise NotConverged(f"the frequency integral reached a relative error of {error:.1e}, not {tolerance:.1e}")
 
@@ -122,6 +124,7 @@ class _Rule:
     def __init__(self, function: Callable[[Floats], Floats], omega0: float, pool: ThreadPoolExecutor) -> None:
         self.function, self.omega0, self.pool = function, omega0, pool
         self.step, self.ends, self.parts = 0.0, [0], list[tuple[Floats, Floats, Floats]]()
+        self.at_zero: Floats = np.zeros(0)
 
     def nodes(self, step: float, last: int) -> tuple[Floats, Floats]:
         """ω and weights of the rule with this step and range."""
@@ -149,6 +152,8 @@ class _Rule:
     def _block(self, job: tuple[Floats, Floats, NDArray[np.bool_]]) -> tuple[Floats, Floats, Floats]:
         omega, weights, even = job
         values = self.function(omega)
+        if omega[0] == 0:
+            self.at_zero = values[..., 0].copy()
         return values @ weights, values[..., even] @ weights[even], values[..., -2:] * weights[-2:]
 
 

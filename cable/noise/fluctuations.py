@@ -200,9 +200,7 @@ def fluctuations(model: CableModel, tolerance: float = 1e-9) -> Fluctuations:
         size[:, count:] = integrals[:, count:]
         return size
 
-    steady = point.network.at(np.zeros(1))
-    still = sum((source.spectrum(steady)[nodes, 0] for source in point.sources), np.zeros(len(nodes)))
-    resistance = steady.input_impedance_GOhm()[nodes, 0].real * MOHM_PER_GOHM
+    resistance = point.steady.input_impedance_GOhm()[nodes, 0].real * MOHM_PER_GOHM
     if count:
         omega0 = slowest_rate_per_ms(point)
         reach = _range_u(point, power, wants_derivative, tolerance)
@@ -211,9 +209,11 @@ def fluctuations(model: CableModel, tolerance: float = 1e-9) -> Fluctuations:
             spectra, scale, omega0, tolerance, reach, analytic_strip(point, omega0), crowded
         )
         by_input, error, used = result.value[:, :count], result.relative_error, len(result.omega_per_ms)
+        still = result.at_zero[:, :count].sum(axis=1)
         derivative = np.where(rough, np.nan, result.value[:, -1]) if wants_derivative else None
     else:
         by_input, error, used, derivative = np.zeros((len(nodes), 0)), 0.0, 0, None
+        still = np.zeros(len(nodes))
     return Fluctuations(
         model=model,
         certificate=Certificate(tolerance, error, refined.relative_error, used, len(layout.row)),

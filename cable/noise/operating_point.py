@@ -90,6 +90,7 @@ class OperatingPoint:
         layout: the pieces.
         passive: the cell without input.
         network: the cell with the inputs' mean conductances.
+        steady: the network at zero frequency.
         numbers: per input, the synapses on pieces (E,) and at nodes (E + 1,).
         reference_mV: the voltage from which `deviation_mV` counts.
         deviation_mV: (E + 1,) mean voltage at nodes, from the reference.
@@ -100,6 +101,7 @@ class OperatingPoint:
     layout: Layout
     passive: Passive
     network: Network
+    steady: Response
     numbers: tuple[tuple[Floats, Floats], ...]
     reference_mV: float
     deviation_mV: Floats
@@ -132,12 +134,10 @@ class OperatingPoint:
                 reversal - self.deviation_mV[1:],
             )
             still = reversal - self.far_mV
-            x2 = self.network.resistance_GOhm * self.network.conductance_nS
-            share = spread_current(np.asarray(x2, dtype=np.complex128)).real
-            force, force_square = (
-                still + share * (near + far - 2 * still),
-                mean_square_along(x2, near, far, still),
-            )
+            share = self.steady.share[:, 0].real
+            force = still + share * (near + far - 2 * still)
+            covariances = self.steady.noise_self[:, 0], self.steady.noise_cross[:, 0]
+            force_square = mean_square_along(share, *covariances, near, far, still)
             with np.errstate(divide="ignore", invalid="ignore"):
                 square_lean = np.where(force_square > 0, (far**2 - near**2) / (12 * force_square), 0.0)
             # synapses and driving force that lean the same way meet: the mean of their product is larger
@@ -216,7 +216,8 @@ def operating_point(model: CableModel, divide: NDArray[np.int64] | None = None) 
         lean=layout.lean_of_area,
         tilt_nS=2 * share * along * (layout.lean_of_length - layout.lean_of_area),
     )
-    deviation = network.at(np.zeros(1)).voltages(drive, moment, node_drive)[:, 0].real
+    steady = network.at(np.zeros(1))
+    deviation = steady.voltages(drive, moment, node_drive)[:, 0].real
     return OperatingPoint(
-        model, layout, cell, network, tuple(numbers), reference, deviation, drive / conductance
+        model, layout, cell, network, steady, tuple(numbers), reference, deviation, drive / conductance
     )

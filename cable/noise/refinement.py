@@ -23,7 +23,7 @@ Floats = NDArray[np.float64]
 TARGET = 1e-6  # of the variance at any point
 LOCAL = 2e-6  # of a piece's own effect, which is a small part of the whole
 ALLOWANCE = 4 / 3  # on the measured difference; 16/15 for a clean fourth power
-PROBE_STEP, PROBES = 1.8, 3  # probes at ω = ω₀ sinh(0, 1.8, 3.6): a crude variance, for comparison only
+PROBE_STEP, PROBES = 2.6, 2  # probes at ω = 0 and ω₀ sinh(2.6): a crude variance, for comparison only
 MAX_PIECES = 2_000_000
 
 

@@ -141,16 +141,18 @@ def spread_current(x2: Complexes) -> Complexes:
     return np.where(small, 0.5, form.shunt / np.where(small, 1.0, x2))
 
 
-def mean_square_along(x2: Floats, at_a: Floats, at_b: Floats, far_from_ends: Floats) -> Floats:
+def mean_square_along(
+    share: Floats, noise_self: Floats, noise_cross: Floats, at_a: Floats, at_b: Floats, far_from_ends: Floats
+) -> Floats:
     """Mean over a cylinder of v(s)², where v solves the steady cable equation.
 
-    v(s) = u + [(v_a - u) sinh x(1-s) + (v_b - u) sinh xs]/sinh x, with u the value far from both ends.
+    v(s) = u + [(v_a - u) sinh x(1-s) + (v_b - u) sinh xs]/sinh x, with u the value far from both ends; the
+    integrals over s are those that spread currents and noise need too.
 
     Args:
-        x2: (E,) squared electrotonic length, real.
+        share: (E,) tanh(x/2)/x at zero frequency, see `spread_current`.
+        noise_self, noise_cross: (E,) as in `CylinderForm`, at zero frequency.
         at_a, at_b, far_from_ends: (E,) values at the ends, and u.
     """
-    form = cylinder_form(np.asarray(x2, dtype=np.complex128))
-    share = spread_current(np.asarray(x2, dtype=np.complex128)).real
     a, b, u = at_a - far_from_ends, at_b - far_from_ends, far_from_ends
-    return u * u + 2 * u * share * (a + b) + (a * a + b * b) * form.noise_self + 2 * a * b * form.noise_cross
+    return u * u + 2 * u * share * (a + b) + (a * a + b * b) * noise_self + 2 * a * b * noise_cross
