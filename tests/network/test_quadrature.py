@@ -1,0 +1,54 @@
+"""The frequency integral: known integrals within the certified error, and refusal where there is none."""
+
+from __future__ import annotations
+
+import numpy as np
+import pytest
+
+from cable.network.quadrature import NotConverged, integrate
+
+
+def lorentz(rate: float):
+    return lambda omega: (1 / (1 + (omega / rate) ** 2))[None, :] * (2 / rate)
+
+
+@pytest.mark.parametrize("tolerance", [1e-3, 1e-6, 1e-10])
+@pytest.mark.parametrize("rate", [0.05, 0.4, 20.0])
+def test_lorentzians_of_any_rate(rate: float, tolerance: float) -> None:
+    result = integrate(lorentz(rate), lambda v: v, 0.05, tolerance, 5.0)
+    error = abs(float(result.value[0]) - 1.0)
+    assert error <= result.relative_error <= tolerance
+
+
+def test_slow_tails() -> None:
+    """The spectrum of an infinite line driven by white noise everywhere falls as ω^{-3/2}; its variance is 1/4."""
+
+    def spread(omega: np.ndarray) -> np.ndarray:
+        root = 1 / np.sqrt(1 + 1j * omega)
+        with np.errstate(invalid="ignore", divide="ignore"):
+            value = np.where(omega > 1e-6, -root.imag / (2 * omega), 0.25)
+        return value[None, :]
+
+    result = integrate(spread, lambda v: v, 1.0, 1e-8, 30.0)
+    error = abs(float(result.value[0]) / 0.25 - 1)
+    assert error <= result.relative_error <= 1e-8
+
+
+def test_at_zero_is_the_value_at_zero_frequency() -> None:
+    assert integrate(lorentz(0.4), lambda v: v, 0.05, 1e-6, 5.0).at_zero[0] == 5.0
+
+
+def test_divergent_integrals_are_refused() -> None:
+    with pytest.raises(NotConverged, match="falls too slowly"):
+        integrate(lambda w: (1 / (1 + w))[None, :], lambda v: v, 1.0, 1e-6, 5.0)
+
+
+def resonance(omega: np.ndarray) -> np.ndarray:
+    """Poles at ±2 ± 0.05i, near the real axis; (1/π)∫₀^∞ of it is 1/0.05."""
+    return (1 / ((omega - 2.0) ** 2 + 0.05**2) + 1 / ((omega + 2.0) ** 2 + 0.05**2))[None, :]
+
+
+def test_a_narrow_resonance_within_the_strip_that_is_stated() -> None:
+    strip = abs(np.arcsinh((2 + 0.05j) / 0.5).imag)
+    result = integrate(resonance, lambda v: v, 0.5, 1e-6, 20.0, strip)
+    assert abs(float(result.value[0]) * 0.05 - 1) <= result.relative_error <= 1e-6
