@@ -89,9 +89,7 @@ def _cycle(table: SwcTable) -> Finding | None:
     ring = np.roll(ring, -int(np.argmin(ring)))
     if len(ring) < 2:
         return None  # a row that is its own parent, met through a repeated id: said by that check
-    shown = " -> ".join(
-        str(i) for i in table.ids[np.r_[ring, ring[:1]] if len(ring) <= 8 else ring[:8]].tolist()
-    )
+    shown = " -> ".join(str(i) for i in table.ids[np.r_[ring, ring[:1]] if len(ring) <= 8 else ring[:8]].tolist())
     tail = f" -> ... ({len(ring)} rows)" if len(ring) > 8 else ""
     message = f"the parents run in a circle: {shown}{tail}"
     return Finding(
@@ -188,9 +186,7 @@ def _radius_remedy(table: SwcTable, rows: Ints) -> str:
         ways.append(f"leave {way} out: omit = [{names}]")
     if placed and np.isin(kinds, table.kinds[table.readable_radius]).any():
         ways.append(f"apply the repair {NEIGHBOURS}")
-    ways.append(
-        "correct the rows" if ways else "correct the rows; nothing in the file tells what they should be"
-    )
+    ways.append("correct the rows" if ways else "correct the rows; nothing in the file tells what they should be")
     sentence = ", or ".join(ways)
     return f"{sentence[0].upper()}{sentence[1:]}."
 

@@ -65,7 +65,7 @@ def _zero_length(table: SwcTable) -> Finding | None:
 
 def _constant_radius(table: SwcTable) -> Finding | None:
     rows = _neurites(table)
-    values, counts = np.unique(table.radius_um[rows], return_counts=True)
+    values = np.unique(table.radius_um[rows])
     if len(rows) < 10:
         return None
     if len(values) == 1:
@@ -153,9 +153,7 @@ def _spines(table: SwcTable) -> Finding | None:
         f"{len(rows):,} of {tips:,} tips are one-row side twigs shorter than {TWIG_UM:g} µm "
         f"{table.named(rows)}: spines drawn into the tree"
     )
-    remedy = (
-        'Apply the repair "remove side twigs" and give spines as membrane area, or leave spine_factor at 1.'
-    )
+    remedy = 'Apply the repair "remove side twigs" and give spines as membrane area, or leave spine_factor at 1.'
     return finding_at(table, "spines-in-tree", "warning", rows, message, remedy)
 
 

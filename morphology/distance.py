@@ -43,13 +43,9 @@ def area_by_distance(tree: CellTree, bin_um: float = BIN_UM) -> tuple[DistanceBi
     high = np.where(index == last[owner], 1.0, high)
     near, far = shape.radius_near_um[edge][owner], shape.radius_far_um[edge][owner]
     # area from the near end grows as the integral of the linear radius along the slant
-    area = (
-        shape.area_um2[edge][owner] * (high - low) * (2 * near + (far - near) * (low + high)) / (near + far)
-    )
+    area = shape.area_um2[edge][owner] * (high - low) * (2 * near + (far - near) * (low + high)) / (near + far)
     areas = np.bincount(index, area, n)
     lengths = np.bincount(index, (high - low) * length[owner], n)
     centre = np.minimum((tree.path_um[sphere] / bin_um).astype(np.int64), n - 1)
     areas = areas + np.bincount(centre, shape.sphere_area_um2[sphere], n)
-    return tuple(
-        DistanceBin(k * bin_um, (k + 1) * bin_um, float(areas[k]), float(lengths[k])) for k in range(n)
-    )
+    return tuple(DistanceBin(k * bin_um, (k + 1) * bin_um, float(areas[k]), float(lengths[k])) for k in range(n))

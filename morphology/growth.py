@@ -106,9 +106,7 @@ def rall_tree(
             radii += [diameter / 2] * points_per_branch
             parents += [parent, *range(first, first + points_per_branch - 1)]
             for part, turn in ((share, 0.5), (1.0 - share, -0.5)):
-                grown.append(
-                    (len(kinds) - 1, path[-1], diameter * part ** (2 / 3), angle + turn / (order + 1))
-                )
+                grown.append((len(kinds) - 1, path[-1], diameter * part ** (2 / 3), angle + turn / (order + 1)))
         branches = grown
     return _tree(np.array(kinds), np.array(places), np.array(radii), np.array(parents), "Rall tree")
 

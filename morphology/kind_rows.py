@@ -96,9 +96,7 @@ def _axon_from_dendrite(table: SwcTable) -> Finding | None:
     if not rows.size:
         return None
     message = f"an axon leaves a dendrite in {counted(len(rows), 'place')} {table.named(rows)}"
-    return finding_at(
-        table, "axon-from-dendrite", "note", rows, message, "Nothing to do if this is so in the cell."
-    )
+    return finding_at(table, "axon-from-dendrite", "note", rows, message, "Nothing to do if this is so in the cell.")
 
 
 def _mixed_kinds(table: SwcTable) -> Finding | None:

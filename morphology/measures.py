@@ -68,9 +68,7 @@ class Measures:
         return {name: _plain(value) for name, value in asdict(self).items()}
 
 
-def measure(
-    tree: CellTree, axial_resistivity_ohm_cm: float = 150.0, resistance_ohm_cm2: float = 20_000.0
-) -> Measures:
+def measure(tree: CellTree, axial_resistivity_ohm_cm: float = 150.0, resistance_ohm_cm2: float = 20_000.0) -> Measures:
     """The measures of a tree; the two membrane numbers serve the electrotonic extent alone.
 
     Raises:
@@ -104,9 +102,7 @@ def measure(
     )
 
 
-def electrotonic_distance(
-    tree: CellTree, axial_resistivity_ohm_cm: float, resistance_ohm_cm2: float
-) -> Floats:
+def electrotonic_distance(tree: CellTree, axial_resistivity_ohm_cm: float, resistance_ohm_cm2: float) -> Floats:
     """(N,) distance from the soma's surface in length constants, λ = sqrt(R_m d / (4 R_i)).
 
     Along a frustum the integral of dx/λ is closed: 2 Δx / (sqrt(d_near) + sqrt(d_far)) · sqrt(4 R_i/R_m).
@@ -178,13 +174,7 @@ def sum_from_root(tree: CellTree, step: Floats) -> Floats:
 def _runs(tree: CellTree, cable: Mask, forks: Mask) -> Ints:
     """(N,) a label that the edges of one unbranched run of one kind share: the row where the run begins."""
     parent = np.maximum(tree.parent, 0)
-    begins = (
-        (tree.parent < 0)
-        | ~cable
-        | ~cable[parent]
-        | forks[parent]
-        | (tree.shape.kind != tree.shape.kind[parent])
-    )
+    begins = (tree.parent < 0) | ~cable | ~cable[parent] | forks[parent] | (tree.shape.kind != tree.shape.kind[parent])
     jump = np.where(begins, np.arange(len(tree)), parent)
     while (jump != jump[jump]).any():
         jump = jump[jump]

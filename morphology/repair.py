@@ -28,9 +28,7 @@ def apply_repairs(table: SwcTable, names: Iterable[str]) -> tuple[SwcTable, list
         if name not in REPAIRS:
             known = ", ".join(f'"{known}"' for known in REPAIRS)
             message = f"repairs: there is no repair {str(name)!r}"
-            raise SwcError(
-                [Finding("unknown-repair", "error", None, message, f"Known are {known}.")], table.name
-            )
+            raise SwcError([Finding("unknown-repair", "error", None, message, f"Known are {known}.")], table.name)
         if not table.linked or not table.roots.size:
             raise SwcError(table.findings, table.name)
         with np.errstate(all="ignore"):  # rows may hold NaN or infinity; what cannot be repaired stays
@@ -83,15 +81,11 @@ def soma_from_outline(table: SwcTable) -> tuple[SwcTable, Finding]:
     """Put one sphere in the place of a soma that is drawn as an outline or as a stack of discs."""
     rows = table.somata
     if soma_form(table) not in ("outline", "chain") or len(rows) < 4:
-        return _refused(
-            table, FROM_OUTLINE, "the soma rows are neither an outline nor a stack of four rows or more"
-        )
+        return _refused(table, FROM_OUTLINE, "the soma rows are neither an outline nor a stack of four rows or more")
     if soma_parts(table) > 1:
         return _refused(table, FROM_OUTLINE, "the soma rows are in parts which do not touch")
     centre, radius = sphere_from_outline(table)
-    top = rows[
-        np.flatnonzero((table.parent[rows] < 0) | (table.kinds[np.maximum(table.parent[rows], 0)] != SOMA))[0]
-    ]
+    top = rows[np.flatnonzero((table.parent[rows] < 0) | (table.kinds[np.maximum(table.parent[rows], 0)] != SOMA))[0]]
     xyz, radii, parent_ids = table.xyz_um.copy(), table.radius_um.copy(), table.parent_ids.copy()
     xyz[top], radii[top] = centre, radius
     hanging = (table.parent >= 0) & (table.kinds[np.maximum(table.parent, 0)] == SOMA)
@@ -141,9 +135,7 @@ def remove_side_twigs(table: SwcTable) -> tuple[SwcTable, Finding]:
     return _done(table, table.take(keep), "remove side twigs", len(twigs))
 
 
-def _done(
-    before: SwcTable, after: SwcTable, name: str, changed: int, detail: str = ""
-) -> tuple[SwcTable, Finding]:
+def _done(before: SwcTable, after: SwcTable, name: str, changed: int, detail: str = "") -> tuple[SwcTable, Finding]:
     if not changed:
         return _refused(before, name, "no row of this cell needs it or allows it")
     (length, area), (new_length, new_area) = _size(before), _size(after)

@@ -103,8 +103,8 @@ class Zone:
             inside = tree.subtree(_row_of(tree, self.subtree_of))
             chosen, spheres = chosen & inside, spheres & inside
         sphere_radius = np.sqrt(shape.sphere_area_um2 / (4 * np.pi))
-        height = tree.xyz_um[:, AXES[self.height_axis]]
-        height = height - height[shape.soma]
+        along = tree.xyz_um[:, AXES[self.height_axis]]
+        height: Floats = along - float(along[shape.soma])
         linear = (
             (self.path_um, tree.path_um[parent], tree.path_um, tree.path_um),
             (self.height_um, height[parent], height, height),
@@ -171,9 +171,7 @@ class Site:
         if (self.swc_id is None) == (self.path_um is None):
             raise ValueError("a site needs either swc_id or path_um (with filters such as kinds)")
         if not 0.0 <= self.fraction <= 1.0:
-            raise ValueError(
-                f"fraction: expected 0 to 1 (from the parent to the point), found {self.fraction}"
-            )
+            raise ValueError(f"fraction: expected 0 to 1 (from the parent to the point), found {self.fraction}")
 
     def resolve(self, tree: CellTree) -> Place:
         """The one place of `tree` that this site names.

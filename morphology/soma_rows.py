@@ -142,9 +142,7 @@ def check_soma(table: SwcTable) -> list[Finding]:
         )
     elif form == "chain":
         message = f"the soma is a chain of {len(rows)} rows (ids {ids})"
-        findings.append(
-            Finding("soma-chain", "note", line, message, "Nothing to do: it is taken as a run of frusta.")
-        )
+        findings.append(Finding("soma-chain", "note", line, message, "Nothing to do: it is taken as a run of frusta."))
     parts = soma_parts(table)
     if parts > 1:
         message = f"the soma rows are in {parts} parts which do not touch (ids {ids})"

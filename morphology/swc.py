@@ -157,9 +157,7 @@ def _omitted_codes(omit: Iterable[str | int], name: str) -> list[int]:
         return sorted({kind_code(k) for k in ([omit] if isinstance(omit, str) else omit)})
     except (ValueError, TypeError) as error:
         known = ", ".join(f'"{word}"' for word in KIND_NAMES.values())
-        raise _refused(
-            name, "unknown-omit", f"omit: {error}", f"Use {known} or the number of a kind."
-        ) from None
+        raise _refused(name, "unknown-omit", f"omit: {error}", f"Use {known} or the number of a kind.") from None
 
 
 def _factors(shrinkage: tuple[float, float], name: str) -> tuple[float, float]:

@@ -74,11 +74,7 @@ def parse(text: str) -> Cells:
     if "\x00" in text or len(_CONTROL.findall(head)) > len(head) // 50:
         line = text.count("\n", 0, max(text.find("\x00"), 0)) + 1
         return _none(
-            [
-                Finding(
-                    "not-text", "error", line, "the file is not text", "Give the SWC file itself, unpacked."
-                )
-            ]
+            [Finding("not-text", "error", line, "the file is not text", "Give the SWC file itself, unpacked.")]
         )
     findings = []
     text = text.removeprefix("\ufeff")
@@ -125,11 +121,7 @@ def _all_numbers(bodies: list[str], delimiter: str | None) -> NDArray[np.float64
     if values.shape != (len(bodies), 7):
         return None
     whole = values[:, WHOLE]
-    sound = (
-        np.isfinite(whole).all()
-        and (np.abs(whole) < LARGEST_WHOLE).all()
-        and (whole == np.floor(whole)).all()
-    )
+    sound = np.isfinite(whole).all() and (np.abs(whole) < LARGEST_WHOLE).all() and (whole == np.floor(whole)).all()
     return values if sound else None
 
 
@@ -184,9 +176,7 @@ def _has_decimal_comma(body: str) -> bool:
     return len(tokens) >= 7 and any(_DECIMAL_COMMA.search(t) for t in tokens)
 
 
-def _row(
-    tokens: list[str], line: int, unread: dict[int, tuple[str, str]], odd: _Oddities
-) -> list[float] | None:
+def _row(tokens: list[str], line: int, unread: dict[int, tuple[str, str]], odd: _Oddities) -> list[float] | None:
     """The seven numbers of a row; None where its id, kind or parent cannot be told."""
     row = []
     for column, token in enumerate(tokens[:7]):
@@ -241,10 +231,6 @@ def _described(odd: _Oddities, total: int) -> list[Finding]:
     if odd.not_whole:
         line, token = odd.not_whole[0]
         n = len(odd.not_whole)
-        message = (
-            f"{subject(n, 'have', 'has', 'line')} an id, kind or parent that is not whole: {excerpt(token)}"
-        )
-        findings.append(
-            Finding("not-whole", "error", line, message, "Write ids, kinds and parents as whole numbers.")
-        )
+        message = f"{subject(n, 'have', 'has', 'line')} an id, kind or parent that is not whole: {excerpt(token)}"
+        findings.append(Finding("not-whole", "error", line, message, "Write ids, kinds and parents as whole numbers."))
     return findings

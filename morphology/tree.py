@@ -60,10 +60,7 @@ class CellTree:
         n = len(self.ids)
         if n == 0:
             raise ValueError("a cell needs at least one point")
-        if not (
-            self.kinds.shape == self.radius_um.shape == self.parent.shape == (n,)
-            and self.xyz_um.shape == (n, 3)
-        ):
+        if not (self.kinds.shape == self.radius_um.shape == self.parent.shape == (n,) and self.xyz_um.shape == (n, 3)):
             raise ValueError("ids, kinds, radius_um and parent must be (N,), xyz_um (N, 3), with one N")
         if not np.isfinite(self.xyz_um).all():
             raise ValueError("a position is not finite")
@@ -253,9 +250,7 @@ class CellTree:
                 radius_um=self.radius_um[row],
             )
         for row in range(1, len(self)):
-            graph.add_edge(
-                int(self.ids[self.parent[row]]), int(self.ids[row]), length_um=self.edge_length_um[row]
-            )
+            graph.add_edge(int(self.ids[self.parent[row]]), int(self.ids[row]), length_um=self.edge_length_um[row])
         return graph
 
 

@@ -43,11 +43,22 @@ def test_top_level_is_the_one_that_was_agreed() -> None:
     if listed.returncode:
         pytest.skip("not a git checkout")
     names = {name for name in listed.stdout.split() if not name.startswith(".")}
-    assert names == {"README.md", "DEVELOPERS.md", "pyproject.toml", "cable", "morphology", "tests", "examples"}
+    assert names == {
+        "README.md",
+        "DEVELOPERS.md",
+        "pyproject.toml",
+        "cable",
+        "morphology",
+        "tests",
+        "examples",
+    }
 
 
 def test_continuous_integration_runs_the_readmes_test_command() -> None:
-    readme, script = (ROOT / "README.md").read_text(encoding="utf-8"), (ROOT / ".ci" / "run").read_text(encoding="utf-8")
+    readme, script = (
+        (ROOT / "README.md").read_text(encoding="utf-8"),
+        (ROOT / ".ci" / "run").read_text(encoding="utf-8"),
+    )
     command = next(line for line in readme.splitlines() if "pytest" in line and line.startswith("python3 -m venv"))
     for step in command.split(" && "):
         assert step in script

@@ -75,18 +75,14 @@ def output(
     if ending not in endings:
         found = f"ends in {shown(ending)}" if ending else "has no ending"
         known = choices(list(endings))
-        raise DeskError(
-            f"{shown(given)}: the output {found}, expected {known}; the ending chooses the format"
-        )
+        raise DeskError(f"{shown(given)}: the output {found}, expected {known}; the ending chooses the format")
     with _clear_errors(given):
         target = given.resolve()
         if target.is_dir():
             raise DeskError(f"{shown(given)}: is a folder, expected the name of a file to write")
         for source in inputs:
             if target == Path(source).resolve() or (target.exists() and os.path.samefile(target, source)):
-                raise DeskError(
-                    f"{shown(given)}: is an input of this run and is never written; choose another name"
-                )
+                raise DeskError(f"{shown(given)}: is an input of this run and is never written; choose another name")
         if target.exists() and not force:
             raise _exists(given)
         check_folder(target.parent, given)
@@ -96,13 +92,9 @@ def output(
 def check_folder(folder: Path, asked_for: Path) -> None:
     """Raise DeskError unless `folder` exists and a file can be made in it."""
     if not folder.is_dir():
-        raise DeskError(
-            f"{shown(asked_for)}: there is no folder {shown(folder)}; make it first or choose another"
-        )
+        raise DeskError(f"{shown(asked_for)}: there is no folder {shown(folder)}; make it first or choose another")
     if not os.access(folder, os.W_OK | os.X_OK):
-        raise DeskError(
-            f"{shown(asked_for)}: the folder {shown(folder)} cannot be written to; choose another"
-        )
+        raise DeskError(f"{shown(asked_for)}: the folder {shown(folder)} cannot be written to; choose another")
 
 
 def _exists(path: Path) -> DeskError:

@@ -64,9 +64,7 @@ def print_inspection(result: Inspection) -> None:
         out.print(_measures_table(result.measures))
         out.print(f"soma rule: {shown(result.measures.soma_rule)}")
     counts = {s: sum(f.severity == s for f in result.findings) for s in ("error", "warning", "note")}
-    tally = (
-        ", ".join(f"{n} {word}{'' if n == 1 else 's'}" for word, n in counts.items() if n) or "nothing odd"
-    )
+    tally = ", ".join(f"{n} {word}{'' if n == 1 else 's'}" for word, n in counts.items() if n) or "nothing odd"
     verdict = "can be computed" if result.usable else "cannot be computed"
     out.print(f"{shown(result.name)} {verdict}: {tally}")
 
@@ -84,9 +82,7 @@ def _findings_table(findings: Sequence[Finding]) -> Table:
     for f in findings:
         said = Text(shown(f.message, 1000)).append(f"\n{shown(f.remedy, 1000)}", style="dim")
         line = "" if f.line is None else str(f.line)
-        table.add_row(
-            Text(f.severity, style="bold" if f.severity == "error" else ""), line, Text(shown(f.code)), said
-        )
+        table.add_row(Text(f.severity, style="bold" if f.severity == "error" else ""), line, Text(shown(f.code)), said)
     return table
 
 

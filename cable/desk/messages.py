@@ -42,11 +42,7 @@ def did_you_mean(word: str, known: Iterable[str]) -> str:
     """A sentence that names the nearest known word, or all of them where none is near."""
     items = list(known)
     close = nearest(word, items)
-    return (
-        f"did you mean {quoted(close)}?"
-        if close
-        else f"known are {choices([quoted(k) for k in items], 'and')}"
-    )
+    return f"did you mean {quoted(close)}?" if close else f"known are {choices([quoted(k) for k in items], 'and')}"
 
 
 def version() -> str:

@@ -35,9 +35,7 @@ class ScenarioError(DeskError, ValueError):
     def __str__(self) -> str:
         lines = [": ".join(p for p in (shown(self.file), x.key, x.message) if p) for x in self.problems]
         more = len(lines) - SHOWN_PROBLEMS
-        return "\n".join(
-            lines[:SHOWN_PROBLEMS] + ([f"and {more} more in {shown(self.file)}"] if more > 0 else [])
-        )
+        return "\n".join(lines[:SHOWN_PROBLEMS] + ([f"and {more} more in {shown(self.file)}"] if more > 0 else []))
 
 
 def key_path(location: Sequence[str | int]) -> str:
@@ -48,9 +46,7 @@ def key_path(location: Sequence[str | int]) -> str:
     return path
 
 
-def problems_of(
-    errors: Iterable[Mapping[str, Any]], document: Mapping[str, Any], schema: type
-) -> list[Problem]:
+def problems_of(errors: Iterable[Mapping[str, Any]], document: Mapping[str, Any], schema: type) -> list[Problem]:
     """The errors of pydantic in our words.
 
     Args:
@@ -86,11 +82,7 @@ def _sentence(error: Mapping[str, Any], location: Sequence[str | int], schema: t
         return f"found {said}, expected a number {bound}{about}; correct it"
     if kind in ("float_type", "int_type", "float_parsing", "int_from_float", "int_parsing"):
         number = "a whole number" if kind.startswith("int") else "a number"
-        remedy = (
-            "write the number without quotes; the key says its unit"
-            if isinstance(found, str)
-            else "correct it"
-        )
+        remedy = "write the number without quotes; the key says its unit" if isinstance(found, str) else "correct it"
         return f"found {said}, expected {number}{about}; {remedy}"
     expected = {
         "string_type": "text in quotes",

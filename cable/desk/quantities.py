@@ -62,9 +62,7 @@ def quantities(word: str, inputs: Sequence[str], known_inputs: Sequence[str]) ->
         DeskError: an unknown quantity or input, a share of no input, or an input beside another quantity.
     """
     if word not in LABELS:
-        raise DeskError(
-            f"--quantity: found {quoted(word)}, expected {choices(LABELS)}; {did_you_mean(word, LABELS)}"
-        )
+        raise DeskError(f"--quantity: found {quoted(word)}, expected {choices(LABELS)}; {did_you_mean(word, LABELS)}")
     if word != "share":
         if inputs:
             raise DeskError(f'--input: goes with --quantity share, found it with "{word}"; take it out')

@@ -119,9 +119,7 @@ def parse_toml(raw: bytes, file: str) -> dict[str, Any]:
         return tomllib.loads(raw.decode("utf-8-sig").replace("\r\n", "\n"))
     except UnicodeDecodeError as error:
         line = raw.count(b"\n", 0, error.start) + 1
-        raise ScenarioError(
-            file, [Problem(f"line {line}", "is not UTF-8 text; save the file as UTF-8")]
-        ) from None
+        raise ScenarioError(file, [Problem(f"line {line}", "is not UTF-8 text; save the file as UTF-8")]) from None
     except tomllib.TOMLDecodeError as error:
         if file.lower().endswith(".swc"):
             message = "is a reconstruction, expected a scenario; look at it with `cablenoise inspect`"
@@ -193,9 +191,7 @@ def _read_cell(document: Document, path: Path, file: str) -> tuple[bytes, CellTr
     return data, tree, findings
 
 
-def _places(
-    document: Document, tree: CellTree, file: str
-) -> tuple[tuple[Site, ...], tuple[tuple[Placed, ...], ...]]:
+def _places(document: Document, tree: CellTree, file: str) -> tuple[tuple[Site, ...], tuple[tuple[Placed, ...], ...]]:
     """Sites and point synapses, each resolved once so that all that name no place are reported together."""
     problems: list[Problem] = []
 
@@ -207,14 +203,11 @@ def _places(
         return site
 
     sites = tuple(
-        resolved(s.at.site(s.name), f"site[{i}].at", f"site {quoted(s.name)}")
-        for i, s in enumerate(document.site)
+        resolved(s.at.site(s.name), f"site[{i}].at", f"site {quoted(s.name)}") for i, s in enumerate(document.site)
     )
     placed = tuple(
         tuple(
-            Placed(
-                resolved(p.site(f"{n.name} {k}"), f"input[{i}].at[{k}]", f"input {quoted(n.name)}"), p.number
-            )
+            Placed(resolved(p.site(f"{n.name} {k}"), f"input[{i}].at[{k}]", f"input {quoted(n.name)}"), p.number)
             for k, p in enumerate(n.at or ())
         )
         for i, n in enumerate(document.input)

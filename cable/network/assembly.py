@@ -30,7 +30,7 @@ class Passive:
 
 
 def passive(layout: Layout, membrane: Membrane, parts: list[ZonePart]) -> Passive:
-    """The leak, capacitance and axial resistance of every piece and sphere; `parts` are the membrane's zones, resolved."""
+    """Leak, capacitance and axial resistance of every piece and sphere; `parts` are the membrane's zones, resolved."""
     pieces = {name: np.full(len(layout.row), float(getattr(membrane, name))) for name in MEMBRANE_VALUES}
     nodes = {name: np.full(len(layout.parent), float(getattr(membrane, name))) for name in MEMBRANE_VALUES}
     for zone, part in zip(membrane.zones, parts, strict=True):
@@ -41,8 +41,7 @@ def passive(layout: Layout, membrane: Membrane, parts: list[ZonePart]) -> Passiv
                 pieces[name][inside] = value
                 nodes[name][spheres] = value
     area, sphere = (
-        area * values["spine_factor"]
-        for area, values in ((layout.area_um2, pieces), (layout.sphere_area_um2, nodes))
+        area * values["spine_factor"] for area, values in ((layout.area_um2, pieces), (layout.sphere_area_um2, nodes))
     )
     return Passive(
         resistance_GOhm=resistivity_GOhm_um(pieces["axial_resistivity_ohm_cm"]) * layout.axial_per_um,

@@ -56,7 +56,7 @@ def eliminate(plan: Plan, shunt: Complexes, coupling: Complexes) -> Factors:
 
     Rows stand in the network's own order; row i of `coupling` is the edge between node i + 1 and its parent.
     """
-    n, width = shunt.shape
+    width = shunt.shape[1]
     s = np.empty_like(shunt)
     s[plan.node] = shunt
     c = np.empty((plan.edges, width), dtype=shunt.dtype)
@@ -122,7 +122,7 @@ def variances(factors: Factors, z: Impedances, self_noise: Floats, cross_noise: 
         cross_noise: (n - 1, F) E[I_child I_parent*] of each edge, real.
     """
     plan = factors.plan
-    n, width = self_noise.shape
+    width = self_noise.shape[1]
     w = np.empty_like(self_noise)
     w[plan.node] = self_noise
     cross = np.empty((plan.edges, width), dtype=np.complex128)
@@ -184,9 +184,7 @@ def _unfold_noise(
         u_q = z_across * with_p[:chain] + z.point[step.child] * with_q
         m_p[:chain] += a_q * p_across
         u_m[:chain] += a_q * u_q
-        q_m = (
-            a_p[:chain] * p_across.conj() + a_q * p[step.child] + inverse[:chain] * u_q.conj()
-        ).conj()  # E[V_q V_m*]
+        q_m = (a_p[:chain] * p_across.conj() + a_q * p[step.child] + inverse[:chain] * u_q.conj()).conj()  # E[V_q V_m*]
         cross[step.to_child] = q_m
     u_m += a_p * u_p
     m_p += inverse * u_p.conj()

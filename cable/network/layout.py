@@ -131,17 +131,10 @@ def lay_out(tree: CellTree, parts: list[ZonePart], places: list[Place], divide: 
         divide: (segments,) into how many pieces of equal length each stretch is divided; None for one each.
     """
     shape, n = tree.shape, len(tree)
-    rows = np.arange(1, n)
-    cable = rows[shape.far[1:] > shape.near[1:]]
-    rows = (
-        [cable, cable]
-        + [np.arange(n)] * (2 * len(parts))
-        + [np.array([p.row for p in places], dtype=np.int64)]
-    )
+    cable = 1 + np.flatnonzero(shape.far[1:] > shape.near[1:])
+    rows = [cable, cable] + [np.arange(n)] * (2 * len(parts)) + [np.array([p.row for p in places], dtype=np.int64)]
     fractions = [shape.near[cable], shape.far[cable]]
-    fractions += [limit for part in parts for limit in (part.low, part.high)] + [
-        np.array([p.fraction for p in places])
-    ]
+    fractions += [limit for part in parts for limit in (part.low, part.high)] + [np.array([p.fraction for p in places])]
     row, cut = np.concatenate(rows), np.concatenate(fractions)
     useful = (shape.far[row] > shape.near[row]) & (cut >= shape.near[row]) & (cut <= shape.far[row])
     row, cut = row[useful], cut[useful]

@@ -33,7 +33,8 @@ class Certificate:
         division = (
             "every cylinder is exact as it is"
             if self.refinement_relative_error == 0
-            else f"dividing tapering and driven cylinders ({self.pieces} pieces) leaves at most {self.refinement_relative_error:.0e}"
+            else f"dividing tapering and driven cylinders ({self.pieces} pieces) leaves at most "
+            f"{self.refinement_relative_error:.0e}"
         )
         return (
             f"Variances are integrated over {self.frequencies} frequencies to a relative error of at most "

@@ -164,9 +164,7 @@ class Fluctuations:
             mean_mV=float(self._mean[at]),
             sd_mV=math.sqrt(self._variance[at]),
             variance_mV2=float(self._variance[at]),
-            variance_by_input_mV2={
-                one.name: float(self._by_input[at, k]) for k, one in enumerate(self.model.inputs)
-            },
+            variance_by_input_mV2={one.name: float(self._by_input[at, k]) for k, one in enumerate(self.model.inputs)},
             correlation_time_ms=float(self._correlation_time[at]),
             input_resistance_MOhm=float(self._resistance[at]),
             upcrossing_Hz=None if self._upcrossing is None else float(self._upcrossing[at]),
@@ -178,9 +176,7 @@ def fluctuations(model: CableModel, tolerance: float = 1e-9) -> Fluctuations:
     refined = model.refined
     point = refined.point
     layout = point.layout
-    nodes = np.r_[layout.row_node, [layout.node_at(place) for place in model.site_places.values()]].astype(
-        np.int64
-    )
+    nodes = np.r_[layout.row_node, [layout.node_at(place) for place in model.site_places.values()]].astype(np.int64)
     power = falls_as(point)[nodes]
     rough = (power <= DERIVATIVE_FINITE_ABOVE) & (power < np.inf)
     wants_derivative = model.threshold_mV is not None
@@ -205,9 +201,7 @@ def fluctuations(model: CableModel, tolerance: float = 1e-9) -> Fluctuations:
         omega0 = slowest_rate_per_ms(point)
         reach = _range_u(point, power, wants_derivative, tolerance)
         crowded = any(one.spike_train.dead_time_ms > 0 for one in model.inputs)
-        result = integrate(
-            spectra, scale, omega0, tolerance, reach, analytic_strip(point, omega0), crowded
-        )
+        result = integrate(spectra, scale, omega0, tolerance, reach, analytic_strip(point, omega0), crowded)
         by_input, error, used = result.value[:, :count], result.relative_error, len(result.omega_per_ms)
         still = result.at_zero[:, :count].sum(axis=1)
         derivative = np.where(rough, np.nan, result.value[:, -1]) if wants_derivative else None

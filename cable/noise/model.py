@@ -57,9 +57,7 @@ class CableModel:
                 if name in names[:index]:
                     place = index - 1 if key == "site" else index
                     extra = " (soma is always a site)" if key == "site" and name == "soma" else ""
-                    raise ModelError(
-                        f"{key}[{place}].name", f"the name {name!r} is used twice{extra}; choose another"
-                    )
+                    raise ModelError(f"{key}[{place}].name", f"the name {name!r} is used twice{extra}; choose another")
         self.membrane_parts, self.input_parts, self.input_places, self.site_places  # noqa: B018 - checks them now
 
     def _part(self, zone: Zone, key: str) -> ZonePart:
@@ -68,9 +66,7 @@ class CableModel:
         except PlaceError as error:
             raise ModelError(f"{key}.subtree_of", str(error)) from None
         if part.empty:
-            raise ModelError(
-                key, "the zone selects nothing of this cell; widen its ranges or check its kinds"
-            )
+            raise ModelError(key, "the zone selects nothing of this cell; widen its ranges or check its kinds")
         return part
 
     def _place(self, site: Site, key: str) -> Place:
@@ -82,9 +78,7 @@ class CableModel:
     @cached_property
     def membrane_parts(self) -> list[ZonePart]:
         """The membrane's zones, resolved."""
-        return [
-            self._part(zone.where, f"membrane.zone[{k}].where") for k, zone in enumerate(self.membrane.zones)
-        ]
+        return [self._part(zone.where, f"membrane.zone[{k}].where") for k, zone in enumerate(self.membrane.zones)]
 
     @cached_property
     def input_parts(self) -> list[ZonePart | None]:

@@ -115,9 +115,7 @@ class OperatingPoint:
     @cached_property
     def sources(self) -> tuple[Source, ...]:
         """The inputs as current noise around this mean state."""
-        return tuple(
-            self._source(one, *numbers) for one, numbers in zip(self.model.inputs, self.numbers, strict=True)
-        )
+        return tuple(self._source(one, *numbers) for one, numbers in zip(self.model.inputs, self.numbers, strict=True))
 
     def _source(self, one: SynapticInput, on_pieces: Floats, at_nodes: Floats) -> Source:
         rate = one.rate_per_ms

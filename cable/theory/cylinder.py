@@ -49,7 +49,10 @@ class CylinderForm(NamedTuple):
 
 @cache
 def _series(name: str, terms: int) -> tuple[float, ...]:
-    """Coefficients in x² of x csch x ("coupling") and of x tanh(x/2) ("shunt"), from the Bernoulli numbers (DLMF 4.33.3, 4.33.5)."""
+    """Coefficients in x² of x csch x ("coupling") and of x tanh(x/2) ("shunt").
+
+    From the Bernoulli numbers (DLMF 4.33; from memory).
+    """
     bernoulli = [Fraction(1)]
     for m in range(1, 2 * terms):
         bernoulli.append(-sum((comb(m + 1, k) * bernoulli[k] for k in range(m)), Fraction(0)) / (m + 1))
@@ -65,10 +68,11 @@ def _terms_for(largest: float) -> int:
     return max(4, int(np.ceil(38.0 / np.log(np.pi**2 / max(largest, 1e-300)))) + 1)
 
 
-def _sum_series(
-    name: str, terms: int, real: Floats, imag: Floats, modulus2: Floats
-) -> tuple[Complexes, Floats]:
-    """The series at z = real + i·imag and its imaginary part over `imag` (synthetic division by t² - 2 real t + |z|²)."""
+def _sum_series(name: str, terms: int, real: Floats, imag: Floats, modulus2: Floats) -> tuple[Complexes, Floats]:
+    """The series at z = real + i·imag and its imaginary part over `imag`.
+
+    Both come out of the synthetic division by t² - 2·real·t + |z|².
+    """
     coefficients = _series(name, terms)
     twice = 2 * real
     b1: Floats = np.full(real.shape, coefficients[-1])
@@ -94,7 +98,7 @@ def _small(x2: Complexes) -> CylinderForm:
 
 
 def _large(x2: Complexes) -> CylinderForm:
-    x = np.sqrt(x2)
+    x: Complexes = np.sqrt(x2)
     alpha, beta = x.real, x.imag
     e = np.exp(-x)
     e2 = e * e
@@ -135,7 +139,7 @@ def _mixed(x2: Complexes, short: NDArray[np.bool_]) -> CylinderForm:
 
 
 def spread_current(x2: Complexes) -> Complexes:
-    """tanh(x/2)/x: the share of an evenly spread, fully correlated current that enters each end (½ for short cylinders)."""
+    """tanh(x/2)/x: the share of an evenly spread current, in step, that enters each end (½ for short cylinders)."""
     form = cylinder_form(x2)
     small = np.abs(x2) < 1e-200
     return np.where(small, 0.5, form.shunt / np.where(small, 1.0, x2))

@@ -88,11 +88,9 @@ def kernel_from_text(text: str) -> Kernel:
     found = _terms(expression, t, text)
     if not found:
         raise ValueError(f"{text!r} is zero at all times")
-    for power, rate in found:
+    for _, rate in found:
         if not complex(rate).real > 0:
-            raise ValueError(
-                f"{text!r} does not decay: expected every term to fall as exp(-t/decay) with decay > 0"
-            )
+            raise ValueError(f"{text!r} does not decay: expected every term to fall as exp(-t/decay) with decay > 0")
     s = sympy.Symbol("s")
     poles: dict[sympy.Expr, int] = {}
     for power, rate in found:
@@ -104,21 +102,15 @@ def kernel_from_text(text: str) -> Kernel:
         for pole, multiplicity in poles.items():
             part *= (1 + s / pole) ** (multiplicity - (power + 1 if pole == rate else 0))
         numerator += part
-    coefficients = [
-        complex(sympy.N(c, 40)).real for c in reversed(sympy.Poly(sympy.expand(numerator), s).all_coeffs())
-    ]
+    coefficients = [complex(sympy.N(c, 40)).real for c in reversed(sympy.Poly(sympy.expand(numerator), s).all_coeffs())]
     while len(coefficients) > 1 and abs(coefficients[-1]) <= 1e-14 * max(abs(c) for c in coefficients):
         coefficients.pop()
-    poles_per_ms = tuple(
-        complex(p) if sympy.im(p) != 0 else float(p) for p, m in poles.items() for _ in range(m)
-    )
+    poles_per_ms = tuple(complex(p) if sympy.im(p) != 0 else float(p) for p, m in poles.items() for _ in range(m))
     terms = tuple(Term(complex(f), n, complex(p)) for (n, p), f in found.items())
     kernel = Kernel(terms, tuple(coefficients), poles_per_ms, text)
     _, peak = peak_of(kernel.value, poles_per_ms)
     if not (np.isfinite(peak) and peak > 0):
-        raise ValueError(
-            f"{text!r} has no positive peak; write the kernel so that its largest value is positive"
-        )
+        raise ValueError(f"{text!r} has no positive peak; write the kernel so that its largest value is positive")
     scaled = tuple(Term(term.factor / peak, term.power, term.rate_per_ms) for term in terms)
     return Kernel(scaled, tuple(c / peak for c in coefficients), poles_per_ms, f"({text.strip()})/{peak!r}")
 
@@ -127,9 +119,7 @@ def _terms(expression: sympy.Expr, t: sympy.Symbol, text: str) -> dict[tuple[int
     """{(n, p): c} with the expression equal to the sum of c·tⁿ·e^{-pt}, exact."""
     import sympy
 
-    wanted = (
-        f"{text!r} is not a sum of terms like t**2*exp(-t/3) or exp(-t/5)*cos(2*t), whose transform is exact"
-    )
+    wanted = f"{text!r} is not a sum of terms like t**2*exp(-t/3) or exp(-t/5)*cos(2*t), whose transform is exact"
     flat = sympy.expand(expression.rewrite(sympy.exp), power_base=True, power_exp=False)
     summands = sympy.Add.make_args(sympy.expand(sympy.powsimp(flat)))
     if len(summands) > MAX_TERMS:

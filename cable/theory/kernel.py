@@ -8,6 +8,7 @@ by term it would lose its leading digits at high frequency, where the terms canc
 from __future__ import annotations
 
 import math
+from collections.abc import Callable
 from dataclasses import dataclass
 from functools import cached_property
 from typing import TYPE_CHECKING
@@ -109,9 +110,7 @@ class Kernel:
         """The kernel at times t_ms (...), 0 before t = 0."""
         t = np.asarray(t_ms, dtype=float)
         after = np.maximum(t, 0.0)
-        total = sum(
-            (term.factor * after**term.power * np.exp(-term.rate_per_ms * after)).real for term in self.terms
-        )
+        total = sum((term.factor * after**term.power * np.exp(-term.rate_per_ms * after)).real for term in self.terms)
         return np.where(t >= 0, total, 0.0)
 
     def transform(self, omega_per_ms: NDArray[np.float64] | float) -> NDArray[np.complex128]:
@@ -161,7 +160,7 @@ class Kernel:
         return parse_expression(self.text)
 
 
-def peak_of(value, poles_per_ms: tuple[complex, ...]) -> tuple[float, float]:
+def peak_of(value: Callable[..., NDArray[np.float64]], poles_per_ms: tuple[complex, ...]) -> tuple[float, float]:
     """Time (ms) and height of the largest absolute value of a kernel with these poles."""
     from scipy.optimize import minimize_scalar
 

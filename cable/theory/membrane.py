@@ -76,7 +76,7 @@ class Membrane:
         return self.resistance_ohm_cm2 * self.capacitance_uF_cm2 * 1e-3
 
     def length_constant_um(self, diameter_um: float) -> float:
-        """Length constant λ = √(R_m·d/(4·R_i)) of a long cylinder, µm (Rall 1977, Handbook of Physiology; from memory)."""
+        """Length constant λ = √(R_m·d/(4·R_i)) of a long cylinder, µm (Rall 1977; from memory)."""
         return math.sqrt(self.resistance_ohm_cm2 / self.axial_resistivity_ohm_cm * 1e4 * diameter_um / 4)
 
 

@@ -60,14 +60,16 @@ class SpikeTrain:
         """Raise ValueError where the dead time leaves no room for the rate."""
         if rate_Hz * PER_MS_PER_HZ * self.dead_time_ms >= 1:
             raise ValueError(
-                f"dead_time_ms = {self.dead_time_ms:g} allows rates below {1e3 / self.dead_time_ms:g} Hz, found {rate_Hz:g} Hz"
+                f"dead_time_ms = {self.dead_time_ms:g} allows rates below {1e3 / self.dead_time_ms:g} Hz, "
+                f"found {rate_Hz:g} Hz"
             )
 
     def poles_per_ms(self, rate_Hz: float) -> tuple[complex, ...]:
         """The p > 0 or complex for which the train's spectrum has a pole at iω = -p; those nearest to ω = 0.
 
         They solve φ(-p) = 1 with φ the Laplace transform of the interval, p ≠ 0: for gamma intervals of order k
-        p = kr(1 - e^{2πij/k}), and the branch point kr; with a dead time D and hazard h, (h - p) e^{-pD}... = h through Lambert's W.
+        p = kr(1 - e^{2πij/k}), and the branch point kr; with a dead time D and hazard h, h e^{pD} = h - p, solved by
+        Lambert's W.
         """
         rate = rate_Hz * PER_MS_PER_HZ
         if self.process == "poisson" or rate == 0:
@@ -75,11 +77,7 @@ class SpikeTrain:
         if self.process == "gamma":
             turns = np.arange(1, max(2, int(self.order // 2) + 1))
             cut = self.order * rate
-            return (
-                (cut, *(cut * (1 - np.exp(2j * np.pi * turns / self.order))).tolist())
-                if self.order >= 2
-                else (cut,)
-            )
+            return (cut, *(cut * (1 - np.exp(2j * np.pi * turns / self.order))).tolist()) if self.order >= 2 else (cut,)
         from scipy.special import lambertw
 
         step = rate * self.dead_time_ms / (1 - rate * self.dead_time_ms)

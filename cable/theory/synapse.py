@@ -70,9 +70,7 @@ class SynapticInput:
         if self.at and given:
             raise ValueError(f"{given[0]} goes with where, not with at")
         if self.where is not None and len(given) != 1:
-            raise ValueError(
-                f"give exactly one of {', '.join(DENSITIES)}; found {' and '.join(given) or 'none'}"
-            )
+            raise ValueError(f"give exactly one of {', '.join(DENSITIES)}; found {' and '.join(given) or 'none'}")
         for name in given:
             check_positive(getattr(self, name), name)
         if self.spread not in ("length", "area"):

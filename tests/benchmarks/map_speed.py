@@ -64,7 +64,9 @@ def best(run: Callable[[], object], times: int = 5) -> float:
     return min(found)
 
 
-def column_route(model: CableModel, nodes: np.ndarray, omega: np.ndarray, weights: np.ndarray) -> tuple[np.ndarray, float, float]:
+def column_route(
+    model: CableModel, nodes: np.ndarray, omega: np.ndarray, weights: np.ndarray
+) -> tuple[np.ndarray, float, float]:
     """Variances (nodes, inputs) from sparse LU columns, and the seconds for the factors and for one column."""
     point = model.refined.point
     net, parent = point.network, point.network.parent[1:]
@@ -75,12 +77,20 @@ def column_route(model: CableModel, nodes: np.ndarray, omega: np.ndarray, weight
         y = net.conductance_nS + 1j * w * net.capacitance_pF
         x = np.sqrt(net.resistance_GOhm * y)
         half = x / np.tanh(x / 2) / 2
-        across, ground = (half - x * np.tanh(x / 2) / 2) / net.resistance_GOhm, x * np.tanh(x / 2) / net.resistance_GOhm
+        across, ground = (
+            (half - x * np.tanh(x / 2) / 2) / net.resistance_GOhm,
+            x * np.tanh(x / 2) / net.resistance_GOhm,
+        )
         at_near, at_far = ground * (1 - 2 * net.lean) - net.tilt_nS, ground * (1 + 2 * net.lean) + net.tilt_nS
         node = net.node_conductance_nS + 1j * w * net.node_capacitance_pF
         rows = np.r_[np.arange(n), parent, pieces + 1, parent, pieces + 1]
         columns = np.r_[np.arange(n), parent, pieces + 1, pieces + 1, parent]
-        lu = splu(csc_array((np.r_[node, across + at_near, across + at_far, -across, -across], (rows, columns)), shape=(n, n)))
+        lu = splu(
+            csc_array(
+                (np.r_[node, across + at_near, across + at_far, -across, -across], (rows, columns)),
+                shape=(n, n),
+            )
+        )
         factor_s += time.perf_counter() - start
         start = time.perf_counter()
         unit = np.zeros((n, len(nodes)), dtype=complex)
@@ -112,7 +122,12 @@ def frequency_nodes(model: CableModel) -> tuple[np.ndarray, np.ndarray]:
     count = model.fluctuations(TOLERANCE).certificate.frequencies
     omega0 = slowest_rate_per_ms(point)
     shape = integrate(
-        lambda w: np.ones((1, len(w))) / (1 + (w / omega0) ** 2), lambda v: v, omega0, TOLERANCE, 1.0, analytic_strip(point, omega0)
+        lambda w: np.ones((1, len(w))) / (1 + (w / omega0) ** 2),
+        lambda v: v,
+        omega0,
+        TOLERANCE,
+        1.0,
+        analytic_strip(point, omega0),
     )
     step = float(np.arcsinh(shape.omega_per_ms[1] / omega0))
     u = step * np.arange(count)
@@ -151,7 +166,11 @@ def measure(tree: CellTree) -> dict[str, object]:
         "max_relative_difference": difference,
         "floor_s": floor_s,
         "over_floor": map_s / floor_s,
-        "spent": {"mean_state_and_refinement_s": refined_s, "sweeps_s": sweeps_s, "sweeps_over_floor": sweeps_s / floor_s},
+        "spent": {
+            "mean_state_and_refinement_s": refined_s,
+            "sweeps_s": sweeps_s,
+            "sweeps_over_floor": sweeps_s / floor_s,
+        },
         "certificate": field.certificate.as_dict(),
         "peak_MB": resource.getrusage(resource.RUSAGE_SELF).ru_maxrss / 1024,
         "note": f"column route: {len(rows)} columns timed per frequency, scaled to all points",
@@ -162,7 +181,9 @@ def scaling() -> dict[str, object]:
     """Seconds and peak memory from 1,000 to 100,000 points, each in a process of its own, and the exponent."""
     found = []
     for points in (1_000, 10_000, 100_000):
-        run = subprocess.run([sys.executable, __file__, "--points", str(points)], capture_output=True, text=True, check=True)
+        run = subprocess.run(
+            [sys.executable, __file__, "--points", str(points)], capture_output=True, text=True, check=True
+        )
         found.append(json.loads(run.stdout))
     seconds = [one["map_s"] for one in found]
     sizes = [one["points"] for one in found]
@@ -173,7 +194,11 @@ def one_size(points: int) -> dict[str, float]:
     """Time and memory of the map of a random arbor."""
     tree = random_arbor(7, points)
     seconds = best(lambda: CableModel(tree, MEMBRANE, INPUTS).fluctuations(TOLERANCE), 3)
-    return {"points": points, "map_s": seconds, "peak_MB": resource.getrusage(resource.RUSAGE_SELF).ru_maxrss / 1024}
+    return {
+        "points": points,
+        "map_s": seconds,
+        "peak_MB": resource.getrusage(resource.RUSAGE_SELF).ru_maxrss / 1024,
+    }
 
 
 def main(arguments: list[str]) -> None:

@@ -62,9 +62,7 @@ def test_the_way_is_the_same_from_any_root(fork, swc):
     way = way_to_site(model, "other tip")
     assert ids[way.rows].tolist() == [1, 2, 3, 5]
     assert way.from_soma_um == pytest.approx([0, 20, 60, 110])
-    assert sites_on_way(model, way) == (
-        ["soma", "other tip", "middle"] if swc is FORK else ["soma", "other tip"]
-    )
+    assert sites_on_way(model, way) == (["soma", "other tip", "middle"] if swc is FORK else ["soma", "other tip"])
 
 
 def test_a_site_between_points_ends_the_way(fork):
@@ -99,10 +97,7 @@ def test_json_and_npz(run, folder):
 
 @pytest.mark.parametrize("ending", ["png", "svg", "pdf"])
 def test_figures_are_written(run, folder, ending):
-    assert (
-        run("along", "stick.toml", "half way", "--out", f"P.{ending}", "--quantity", "variance").exit_code
-        == 0
-    )
+    assert run("along", "stick.toml", "half way", "--out", f"P.{ending}", "--quantity", "variance").exit_code == 0
     assert (folder / f"P.{ending}").stat().st_size > 5000
 
 

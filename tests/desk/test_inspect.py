@@ -15,9 +15,7 @@ def test_json_of_a_sound_cell(run, folder):
     assert result.exit_code == 0 and result.stderr == ""
     found = json.loads(result.stdout)
     assert found["usable"] is True
-    assert found["measures"] == json.loads(
-        json.dumps(measure(CellTree.from_file(folder / "stick.swc")).as_dict())
-    )
+    assert found["measures"] == json.loads(json.dumps(measure(CellTree.from_file(folder / "stick.swc")).as_dict()))
     assert found["measures"]["length_um"] == pytest.approx(600)
 
 

@@ -59,9 +59,7 @@ def test_lengths_and_diameters_are_to_scale(folder):
     assert (c - a)[1] / 100 == pytest.approx(px_per_um, rel=1e-6)
     (cable,) = axes.collections
     widths_um = np.asarray(cable.get_linewidths()) / 72 * drawn.dpi / px_per_um
-    assert widths_um.max() == pytest.approx(2 * 1.8, rel=0.01) and widths_um.min() == pytest.approx(
-        2 * 1.2, rel=0.01
-    )
+    assert widths_um.max() == pytest.approx(2 * 1.8, rel=0.01) and widths_um.min() == pytest.approx(2 * 1.2, rel=0.01)
     assert np.all(np.diff(widths_um) < 0)
     bar = next(line for line in axes.lines if len(line.get_xdata()) == 2 and line.get_linewidth() > 1)
     label = next(t.get_text() for t in axes.texts if "µm" in t.get_text())
@@ -93,9 +91,7 @@ def test_the_flattest_plane_is_chosen():
     flat = ball_and_stick(8, 100, 1)
     assert flattest_plane(flat) == "xy"
     points = neuron(2)
-    turned = type(points)(
-        points.ids, points.kinds, points.xyz_um[:, [2, 1, 0]], points.radius_um, points.parent
-    )
+    turned = type(points)(points.ids, points.kinds, points.xyz_um[:, [2, 1, 0]], points.radius_um, points.parent)
     assert (flattest_plane(points), flattest_plane(turned)) == ("xy", "yz")
     assert flattest_plane(sphere(5)) == "xy"
 
@@ -137,9 +133,7 @@ def test_sites_are_marked_where_they_are(folder):
 
 def test_names_do_not_overlap(folder, run):
     text = (folder / "stick.toml").read_text()
-    extra = "".join(
-        f'[[site]]\nname = "a rather long name {i}"\nat = {{ swc_id = {20 + i} }}\n' for i in range(4)
-    )
+    extra = "".join(f'[[site]]\nname = "a rather long name {i}"\nat = {{ swc_id = {20 + i} }}\n' for i in range(4))
     (folder / "many.toml").write_text(text + extra)
     with styled():
         drawn = draw_map(load_scenario(folder / "many.toml").fluctuations(1e-4), quantities("sd", [], []))
@@ -152,9 +146,7 @@ def test_names_do_not_overlap(folder, run):
 
 
 def test_files_are_what_they_claim_and_names_stay_text(run, edited):
-    path = edited(
-        ('name = "half way"', 'name = "<$x$ & co>"'), ('title = "stick"', 'title = "a $title$ </svg>"')
-    )
+    path = edited(('name = "half way"', 'name = "<$x$ & co>"'), ('title = "stick"', 'title = "a $title$ </svg>"'))
     for ending in ("png", "svg", "pdf"):
         result = run("map", path, "--out", f"M.{ending}")
         assert (result.exit_code, result.output) == (0, "")
@@ -181,19 +173,14 @@ def test_large_cells_are_images_inside_vector_files(folder, run):
 
     (folder / "stick.swc").write_text(to_text(random_arbor(5, 6000)))
     text = (folder / "stick.toml").read_text()
-    (folder / "big.toml").write_text(
-        re.sub(r"\[\[site\]\]\n.*\n.*\n", "", text).replace("[200, inf]", "[20, inf]")
-    )
+    (folder / "big.toml").write_text(re.sub(r"\[\[site\]\]\n.*\n.*\n", "", text).replace("[200, inf]", "[20, inf]"))
     assert run("map", "big.toml", "--out", "M.svg", "--quantity", "sd", "--tolerance", "1e-3").exit_code == 0
     assert (folder / "M.svg").stat().st_size < 3_000_000
     assert "<image" in (folder / "M.svg").read_text()
 
 
 def test_shares_of_named_inputs(run, folder):
-    assert (
-        run("map", "stick.toml", "--out", "S.svg", "--input", "excitation", "--input", "inhibition").exit_code
-        == 0
-    )
+    assert run("map", "stick.toml", "--out", "S.svg", "--input", "excitation", "--input", "inhibition").exit_code == 0
     svg = (folder / "S.svg").read_text()
     assert "excitation: % of the variance" in svg and "inhibition: % of the variance" in svg
     field = load_scenario(folder / "stick.toml").fluctuations(1e-6)
@@ -227,7 +214,5 @@ def test_one_value_everywhere_is_drawn(folder, run):
     (folder / "ball.toml").write_text(inputs.replace("density_per_um =", "density_per_um2 ="))
     assert run("map", "ball.toml", "--out", "M.png").exit_code == 0
     middle = to_rgb(colour_map()(0.5))
-    colours = {
-        tuple(c) for c in np.asarray(Image.open(folder / "M.png").convert("RGB")).reshape(-1, 3).tolist()
-    }
+    colours = {tuple(c) for c in np.asarray(Image.open(folder / "M.png").convert("RGB")).reshape(-1, 3).tolist()}
     assert any(np.allclose(np.array(c) / 255, middle, atol=0.01) for c in colours)

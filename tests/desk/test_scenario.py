@@ -22,8 +22,7 @@ def test_every_value_reaches_the_model(edited):
     path = edited(
         (
             "[[input]]",
-            "[[membrane.zone]]\nwhere = { path_um = [100, inf] }\nspine_factor = 1.9\nrest_mV = -65\n"
-            "[[input]]",
+            "[[membrane.zone]]\nwhere = { path_um = [100, inf] }\nspine_factor = 1.9\nrest_mV = -65\n[[input]]",
         ),
         ("[membrane]", "shrinkage = { xy = 1.1, z = 2.0 }\n\n[membrane]"),
         (
@@ -79,16 +78,12 @@ def test_point_synapses_and_currents(edited):
     ],
 )
 def test_spike_trains(edited, line, process, value):
-    train = (
-        load_scenario(edited(("rate_Hz = 2.0", f"rate_Hz = 2.0\nspike_train = {line}"))).inputs[0].spike_train
-    )
+    train = load_scenario(edited(("rate_Hz = 2.0", f"rate_Hz = 2.0\nspike_train = {line}"))).inputs[0].spike_train
     assert (train.process, train.dead_time_ms) == (process, value)
 
 
 def test_the_hash_is_that_of_both_files_in_a_row(folder):
-    expected = hashlib.sha256(
-        (folder / "stick.toml").read_bytes() + (folder / "stick.swc").read_bytes()
-    ).hexdigest()
+    expected = hashlib.sha256((folder / "stick.toml").read_bytes() + (folder / "stick.swc").read_bytes()).hexdigest()
     read = read_scenario(folder / "stick.toml")
     assert read.sha256 == expected
     assert read.files == (folder / "stick.toml", folder / "stick.swc")

@@ -48,9 +48,7 @@ def test_the_lateral_area_of_a_frustum():
 def test_a_ball_and_stick_counts_the_cable_from_the_surface():
     measures = measure(ball_and_stick(8.0, 300.0, 2.0, points=7))
     assert measures.length_um == pytest.approx(300, rel=1e-14)
-    assert measures.area_by_kind_um2 == pytest.approx(
-        {"soma": 4 * math.pi * 64, "basal": math.pi * 2 * 300}, rel=1e-14
-    )
+    assert measures.area_by_kind_um2 == pytest.approx({"soma": 4 * math.pi * 64, "basal": math.pi * 2 * 300}, rel=1e-14)
     assert measures.max_path_um == pytest.approx(308, rel=1e-14)
     assert measures.taper_by_kind == {"basal": 0}
 
@@ -73,9 +71,7 @@ def test_a_bush_by_hand():
 
 def test_the_electrotonic_length_of_the_reference_cable():
     # L = l / sqrt(R_m d / (4 R_i)) for 1000 µm of 2 µm, 150 Ω cm, 20 000 Ω cm²: Rall 1959, Exp Neurol 1:491
-    assert electrotonic_extent(cylinder(1000, 2.0), 150.0, 20_000.0) == pytest.approx(
-        1.22474487139, rel=1e-11
-    )
+    assert electrotonic_extent(cylinder(1000, 2.0), 150.0, 20_000.0) == pytest.approx(1.22474487139, rel=1e-11)
     # λ = 1 mm for d = 4 µm, 200 Ω cm, 20 000 Ω cm²: Koch 1999, Biophysics of Computation, ch 2 (from memory)
     assert electrotonic_extent(cylinder(1000, 4.0), 200.0, 20_000.0) == pytest.approx(1.0, rel=1e-12)
 
@@ -145,9 +141,7 @@ def test_area_by_distance_cuts_where_the_limits_fall():
 def scalars(measures):
     """The numbers of a cell which must not depend on how it is written down."""
     whole = measures.as_dict()
-    bins = {
-        f"{b['from_um']:g} {k}": b[k] for b in whole["area_by_distance"] for k in ("area_um2", "length_um")
-    }
+    bins = {f"{b['from_um']:g} {k}": b[k] for b in whole["area_by_distance"] for k in ("area_um2", "length_um")}
     kept = ("length_um", "area_um2", "max_path_um", "electrotonic_extent", "branch_points", "tips")
     by_kind = {
         f"{name} {kind}": value
@@ -166,11 +160,7 @@ def split(tree, parts):
         above = last.get(up, -1)
         for k in range(1, cut + 1):
             share = k / cut
-            place = (
-                tree.xyz_um[row]
-                if k == cut
-                else tree.xyz_um[up] + share * (tree.xyz_um[row] - tree.xyz_um[up])
-            )
+            place = tree.xyz_um[row] if k == cut else tree.xyz_um[up] + share * (tree.xyz_um[row] - tree.xyz_um[up])
             size = (
                 tree.radius_um[row]
                 if k == cut
@@ -188,9 +178,7 @@ def split(tree, parts):
 
 def rotated(tree, seed):
     turn, _ = np.linalg.qr(np.random.default_rng(seed).normal(size=(3, 3)))
-    return CellTree(
-        tree.ids, tree.kinds, tree.xyz_um @ turn + np.array([10, -20, 30]), tree.radius_um, tree.parent
-    )
+    return CellTree(tree.ids, tree.kinds, tree.xyz_um @ turn + np.array([10, -20, 30]), tree.radius_um, tree.parent)
 
 
 def renumbered(tree):

@@ -58,8 +58,7 @@ def test_rows_in_any_order_are_repaired_alike():
 
 def circle(angles, pen=0.2, extra=""):
     rows = [
-        f"{i + 1} 1 {1 + 8 * math.cos(a)!r} {2 + 8 * math.sin(a)!r} 3 {pen} {i or -1}"
-        for i, a in enumerate(angles)
+        f"{i + 1} 1 {1 + 8 * math.cos(a)!r} {2 + 8 * math.sin(a)!r} 3 {pen} {i or -1}" for i, a in enumerate(angles)
     ]
     n = len(rows)
     return "\n".join([*rows, f"{n + 1} 3 30 2 3 0.7 {n // 2}", f"{n + 2} 3 60 2 3 0.7 {n + 1}", extra])

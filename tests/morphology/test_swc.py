@@ -241,9 +241,7 @@ def test_rows_that_are_in_order_stay_as_they_stand():
 
 
 def test_an_empty_field_between_commas_does_not_shift_the_columns():
-    assert "not-a-number" in codes("1,1,0,0,0,8,-1\n2,3,,20,0,0,1,1\n2,3,9,,0,1,1\n") | codes(
-        "1,1,0,,0,8,-1\n"
-    )
+    assert "not-a-number" in codes("1,1,0,0,0,8,-1\n2,3,,20,0,0,1,1\n2,3,9,,0,1,1\n") | codes("1,1,0,,0,8,-1\n")
 
 
 def test_the_error_names_file_line_and_remedy_and_survives_pickling():
@@ -276,9 +274,7 @@ def test_a_finding_as_a_dict_and_a_severity_that_does_not_exist():
 
 
 def test_text_from_a_file_is_shown_escaped():
-    (finding,) = [
-        f for f in read_swc_text(changed(4, "3 3 40 3 0 \x1b[31m<b> 2")).findings if f.severity == "error"
-    ]
+    (finding,) = [f for f in read_swc_text(changed(4, "3 3 40 3 0 \x1b[31m<b> 2")).findings if f.severity == "error"]
     assert "\x1b" not in finding.message
     assert "\\x1b" in finding.message
 
@@ -368,9 +364,7 @@ def test_a_large_file_is_read_in_reasonable_time():
     n = 100_000
     place = rng.uniform(-300, 300, (n, 3))
     parent = rng.integers(np.maximum(np.arange(n) - 40, 0), np.maximum(np.arange(n), 1)) + 1
-    rows = [
-        f"{i + 1} 3 {x:.3f} {y:.3f} {z:.3f} 0.5 {parent[i]}" for i, (x, y, z) in enumerate(place.tolist())
-    ]
+    rows = [f"{i + 1} 3 {x:.3f} {y:.3f} {z:.3f} 0.5 {parent[i]}" for i, (x, y, z) in enumerate(place.tolist())]
     rows[0] = "1 1 0 0 0 8 -1"
     for text in ("\n".join(rows), "\n".join(rows).replace(" ", ","), "\n".join(reversed(rows))):
         start = time.perf_counter()

@@ -6,10 +6,10 @@ import mpmath as mp
 import numpy as np
 import pytest
 from numpy.testing import assert_allclose
-from oracles.dense import impedance_and_covariance
 
 from cable.network.elimination import eliminate, impedances, solve, variances
 from cable.network.plan import plan_elimination
+from oracles.dense import impedance_and_covariance
 from tolerances import ALGEBRA
 
 

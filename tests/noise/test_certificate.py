@@ -27,7 +27,13 @@ KERNELS = {
 def test_error_is_below_what_is_certified(name: str, tolerance: float) -> None:
     kernel, train = KERNELS[name]
     one = SynapticInput(
-        name="a", where=Zone(kinds=("basal",)), density_per_um=0.4, rate_Hz=60.0, current_pA=2.0, kernel=kernel, spike_train=train
+        name="a",
+        where=Zone(kinds=("basal",)),
+        density_per_um=0.4,
+        rate_Hz=60.0,
+        current_pA=2.0,
+        kernel=kernel,
+        spike_train=train,
     )
     cell = CableModel(arbor(3, 40), MEMBRANE, (one,))
     exact = cell.fluctuations(1e-10 if name == "dead time" else 1e-12).variance_mV2
@@ -43,7 +49,9 @@ def test_a_point_synapse_whose_kernel_jumps_has_no_crossing_rate_at_its_site() -
     tree = CellTree.from_text("1 1 0 0 0 8 -1\n2 3 8 0 0 1 1\n3 3 100 0 0 1 2\n4 3 300 0 0 1 3\n")
 
     def crossings(kernel: Kernel, swc_id: int) -> tuple[np.ndarray, str]:
-        one = SynapticInput(name="a", at=(Placed(Site("", swc_id=swc_id), 20.0),), rate_Hz=20.0, current_pA=4.0, kernel=kernel)
+        one = SynapticInput(
+            name="a", at=(Placed(Site("", swc_id=swc_id), 20.0),), rate_Hz=20.0, current_pA=4.0, kernel=kernel
+        )
         field = CableModel(tree, MEMBRANE_PLAIN, (one,), threshold_mV=-66.0).fluctuations(1e-6)
         assert field.upcrossing_Hz is not None
         assert np.isfinite(field.sd_mV).all()
@@ -55,5 +63,3 @@ def test_a_point_synapse_whose_kernel_jumps_has_no_crossing_rate_at_its_site() -
     assert not crossings(Kernel.alpha(2.0), 3)[0].any()
     undefined, note = crossings(Kernel.exponential(2.0), 1)  # on the soma's capacitance it is finite
     assert not undefined.any() and note == ""
-
-

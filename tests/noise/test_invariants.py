@@ -22,9 +22,16 @@ def by_id(fluctuations: Fluctuations, values: np.ndarray) -> np.ndarray:
 def same(one: Fluctuations, other: Fluctuations, tolerance: float = EXACT) -> None:
     """Same mean, variance by input, and input resistance at every point of the same id."""
     for name in ("mean_mV", "sd_mV", "input_resistance_MOhm", "correlation_time_ms"):
-        assert_allclose(by_id(one, getattr(one, name)), by_id(other, getattr(other, name)), rtol=tolerance, err_msg=name)
+        assert_allclose(
+            by_id(one, getattr(one, name)), by_id(other, getattr(other, name)), rtol=tolerance, err_msg=name
+        )
     for name, part in one.variance_by_input_mV2.items():
-        assert_allclose(by_id(one, part), by_id(other, other.variance_by_input_mV2[name]), rtol=2 * tolerance, err_msg=name)
+        assert_allclose(
+            by_id(one, part),
+            by_id(other, other.variance_by_input_mV2[name]),
+            rtol=2 * tolerance,
+            err_msg=name,
+        )
 
 
 @pytest.fixture(scope="module")
@@ -138,7 +145,14 @@ def test_common_drive_never_beats_cauchy_schwarz(tree: CellTree) -> None:
 
 
 def test_scaling_laws(tree: CellTree) -> None:
-    one = SynapticInput(name="i", where=Zone(), density_per_um=0.3, rate_Hz=2.0, current_pA=5.0, kernel=Kernel.exponential(2.0))
+    one = SynapticInput(
+        name="i",
+        where=Zone(),
+        density_per_um=0.3,
+        rate_Hz=2.0,
+        current_pA=5.0,
+        kernel=Kernel.exponential(2.0),
+    )
     base = model(tree, one).fluctuations()
     rest = base.model.membrane.rest_mV
     faster = model(tree, replace(one, rate_Hz=6.0)).fluctuations()
@@ -152,11 +166,16 @@ def test_scaling_laws(tree: CellTree) -> None:
 def test_all_admittances_times_k() -> None:
     """Leak, capacitance and axial conductance times k: variance over k², time constants unchanged."""
     tree = arbor(seed=8, points=60)
-    one = SynapticInput(name="i", where=Zone(), density_per_um=0.3, rate_Hz=2.0, current_pA=5.0, kernel=Kernel.alpha(2.0))
+    one = SynapticInput(
+        name="i", where=Zone(), density_per_um=0.3, rate_Hz=2.0, current_pA=5.0, kernel=Kernel.alpha(2.0)
+    )
 
     def at(k: float) -> Fluctuations:
         membrane = Membrane(
-            axial_resistivity_ohm_cm=150 / k, capacitance_uF_cm2=k, resistance_ohm_cm2=20000 / k, rest_mV=-70.0
+            axial_resistivity_ohm_cm=150 / k,
+            capacitance_uF_cm2=k,
+            resistance_ohm_cm2=20000 / k,
+            rest_mV=-70.0,
         )
         return CableModel(tree, membrane, (one,)).fluctuations()
 
@@ -168,7 +187,13 @@ def test_even_area_density_makes_an_even_mean() -> None:
     tree = arbor(seed=9, points=120)
     plain = Membrane(axial_resistivity_ohm_cm=150, capacitance_uF_cm2=1, resistance_ohm_cm2=20000, rest_mV=-70.0)
     even = SynapticInput(
-        name="e", where=Zone(), density_per_um2=0.05, rate_Hz=1.0, conductance_nS=0.5, reversal_mV=0.0, kernel=Kernel.exponential(2.0)
+        name="e",
+        where=Zone(),
+        density_per_um2=0.05,
+        rate_Hz=1.0,
+        conductance_nS=0.5,
+        reversal_mV=0.0,
+        kernel=Kernel.exponential(2.0),
     )
     tonic = 0.05 * 1e-3 * 0.5 * 2.0  # nS/µm²
     leak = 10 / 20000

@@ -5,13 +5,13 @@ from __future__ import annotations
 import numpy as np
 import pytest
 from numpy.testing import assert_allclose
-from oracles.cone import frusta_impedance_GOhm
 
 from cable import CableModel, Kernel, Membrane, SynapticInput
 from cable.noise.operating_point import operating_point
 from cable.noise.refinement import TARGET, refine
 from morphology import CellTree, Zone
 from noise.cells import arbor, model
+from oracles.cone import frusta_impedance_GOhm
 from tolerances import REFINED
 
 MEMBRANE = Membrane(axial_resistivity_ohm_cm=150, capacitance_uF_cm2=1, resistance_ohm_cm2=20000, rest_mV=-70)
@@ -42,7 +42,14 @@ def test_divisions_converge_with_the_fourth_power() -> None:
 
 def test_variance_of_a_tapering_tree() -> None:
     """Even area density: variance from impedances at real Laplace frequencies, exact on cones too."""
-    one = SynapticInput(name="even", where=Zone(), density_per_um2=0.1, rate_Hz=1.0, current_pA=10.0, kernel=Kernel.exponential(2.0))
+    one = SynapticInput(
+        name="even",
+        where=Zone(),
+        density_per_um2=0.1,
+        rate_Hz=1.0,
+        current_pA=10.0,
+        kernel=Kernel.exponential(2.0),
+    )
     field = CableModel(CellTree.from_text(SWC), MEMBRANE, (one,)).fluctuations()
     strength = 1e-3 * 0.1 * 20.0**2 / 0.01
     want = strength / 2 * np.diag(cone_impedance(0.0) - cone_impedance(0.5)).real
@@ -61,7 +68,8 @@ def test_certificate_bounds_the_real_error(seed: int) -> None:
     omega = refined.point.network.slowest_rate_per_ms * np.sinh(u)
     weights = np.cosh(u)
     coarse, exact = (
-        sum(s.spectrum(p.network.at(omega)) for s in p.sources)[p.layout.row_node] @ weights for p in (refined.point, fine)
+        sum(s.spectrum(p.network.at(omega)) for s in p.sources)[p.layout.row_node] @ weights
+        for p in (refined.point, fine)
     )
     assert np.abs(coarse / exact - 1).max() <= 2 * refined.relative_error
     size = np.abs(fine.deviation_mV).max()

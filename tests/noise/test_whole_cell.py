@@ -5,12 +5,12 @@ from __future__ import annotations
 import numpy as np
 import pytest
 from numpy.testing import assert_allclose
-from oracles.compartments import convergence_order, mean_and_covariance, richardson
-from oracles.finite_elements import impedance_GOhm
-from oracles.plain import Cell, Cylinder, Input, Sphere, event_area
 
 from cable import CableModel, Kernel, Membrane, Placed, SynapticInput
 from morphology import CellTree, Site, Zone
+from oracles.compartments import convergence_order, mean_and_covariance, richardson
+from oracles.finite_elements import impedance_GOhm
+from oracles.plain import Cell, Cylinder, Input, Sphere, event_area
 from tolerances import COMPARTMENTS, ELEMENTS
 
 MEMBRANE = Membrane(axial_resistivity_ohm_cm=150, capacitance_uF_cm2=1, resistance_ohm_cm2=20000, rest_mV=-70)
@@ -49,7 +49,12 @@ def test_conductances_points_and_currents_together() -> None:
             kernel=Kernel.alpha(2.5),
         ),
         SynapticInput(
-            name="current", where=Zone(kinds=("apical",)), density_per_um=0.3, rate_Hz=2.0, current_pA=-6.0, kernel=Kernel.exponential(4.0)
+            name="current",
+            where=Zone(kinds=("apical",)),
+            density_per_um=0.3,
+            rate_Hz=2.0,
+            current_pA=-6.0,
+            kernel=Kernel.exponential(4.0),
         ),
     )
     plain = [

@@ -10,10 +10,10 @@ import csv
 from pathlib import Path
 
 import pytest
-from oracles import worked, worked_distal
 from typer.testing import CliRunner
 
 from cable.desk.cli import app
+from oracles import worked, worked_distal
 from tolerances import EXACT
 
 HEAD = """
@@ -28,7 +28,9 @@ rest_mV = {rest!r}
 EXPONENTIAL = "kernel = { decay_ms = 2.0 }\n"
 
 
-def table(folder: Path, swc: str, scenario: str, resistance: float = 20000.0, rest: float = 0.0) -> dict[str, dict[str, str]]:
+def table(
+    folder: Path, swc: str, scenario: str, resistance: float = 20000.0, rest: float = 0.0
+) -> dict[str, dict[str, str]]:
     """Rows of the site table by SWC id (points) and by site name (sites)."""
     (folder / "cell.swc").write_text(swc)
     (folder / "scenario.toml").write_text(HEAD.format(resistance=resistance, rest=rest) + scenario)
@@ -72,10 +74,14 @@ def test_sphere_with_conductance_synapses(tmp_path: Path) -> None:
         tmp_path,
         f"1 1 0 0 0 {radius!r} -1\n",
         population(
-            f"{where}rate_Hz = {excitation!r}\nconductance_nS = 1.2\nreversal_mV = 0.0", "kernel = { decay_ms = 2.728 }\n", "e"
+            f"{where}rate_Hz = {excitation!r}\nconductance_nS = 1.2\nreversal_mV = 0.0",
+            "kernel = { decay_ms = 2.728 }\n",
+            "e",
         )
         + population(
-            f"{where}rate_Hz = {inhibition!r}\nconductance_nS = 0.6\nreversal_mV = -75.0", "kernel = { decay_ms = 10.49 }\n", "i"
+            f"{where}rate_Hz = {inhibition!r}\nconductance_nS = 0.6\nreversal_mV = -75.0",
+            "kernel = { decay_ms = 10.49 }\n",
+            "i",
         ),
         resistance=1000 / 0.045,
         rest=-80.0,
@@ -124,7 +130,9 @@ def test_ball_and_stick(tmp_path: Path) -> None:
         check(rows[row], want["mean_mV"], want[f"sd_{place}_mV"])
     for row, place in (("1", "soma"), ("4", "tip")):
         assert float(rows[row]["upcrossing_Hz"]) == pytest.approx(float(want[f"upcrossing_{place}_Hz"]), rel=EXACT)
-    assert float(rows["1"]["input_resistance_MOhm"]) == pytest.approx(float(want["input_resistance_soma_MOhm"]), rel=EXACT)
+    assert float(rows["1"]["input_resistance_MOhm"]) == pytest.approx(
+        float(want["input_resistance_soma_MOhm"]), rel=EXACT
+    )
 
 
 def test_ball_and_stick_with_common_input(tmp_path: Path) -> None:
@@ -143,9 +151,12 @@ def test_y_branch_by_the_three_halves_law(tmp_path: Path) -> None:
     """A step of radius at the branch point is two rows in one place."""
     want = worked.y_branch()
     trunk = 0.5 * 2 ** (2 / 3) * 1.2
-    swc = f"1 3 0 0 0 {trunk!r} -1\n2 3 400 0 0 {trunk!r} 1\n3 3 400 0 0 0.6 2\n4 3 580 240 0 0.6 3\n5 3 400 0 0 0.6 2\n6 3 580 -240 0 0.6 5\n"
+    swc = f"1 3 0 0 0 {trunk!r} -1\n2 3 400 0 0 {trunk!r} 1\n"
+    swc += "3 3 400 0 0 0.6 2\n4 3 580 240 0 0.6 3\n5 3 400 0 0 0.6 2\n6 3 580 -240 0 0.6 5\n"
     rows = table(tmp_path, swc, population("where = {}\ndensity_per_um2 = 0.1\nrate_Hz = 1.0\ncurrent_pA = 10.0"))
     for row, place in (("1", "root"), ("2", "branch"), ("3", "branch"), ("4", "tip"), ("6", "tip")):
         check(rows[row], want["mean_mV"], want[f"sd_{place}_mV"])
     for row, place in (("1", "root"), ("4", "tip")):
-        assert float(rows[row]["input_resistance_MOhm"]) == pytest.approx(float(want[f"input_resistance_{place}_MOhm"]), rel=EXACT)
+        assert float(rows[row]["input_resistance_MOhm"]) == pytest.approx(
+            float(want[f"input_resistance_{place}_MOhm"]), rel=EXACT
+        )

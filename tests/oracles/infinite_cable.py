@@ -37,9 +37,7 @@ class Cable:
         return 1e-9 * ohm
 
 
-def input_impedance_GOhm(
-    cable: Cable, frequency_Hz: float, length_um: float | None, end: str = "sealed"
-) -> complex:
+def input_impedance_GOhm(cable: Cable, frequency_Hz: float, length_um: float | None, end: str = "sealed") -> complex:
     """Input impedance of a cable of the given length (None: semi-infinite) with a sealed or a killed end."""
     gamma = np.sqrt(1 + 2e-3j * np.pi * frequency_Hz * cable.tau_m_ms)
     if length_um is None:
@@ -48,9 +46,7 @@ def input_impedance_GOhm(
     return cable.R_inf_GOhm / gamma * (tanh if end == "killed" else 1 / tanh)
 
 
-def sealed_transfer_impedance_GOhm(
-    cable: Cable, frequency_Hz: float, length_um: float, x_um: float, z_um: float
-):
+def sealed_transfer_impedance_GOhm(cable: Cable, frequency_Hz: float, length_um: float, x_um: float, z_um: float):
     """Transfer impedance between two places of a cable with two sealed ends."""
     gamma = np.sqrt(1 + 2e-3j * np.pi * frequency_Hz * cable.tau_m_ms) / cable.lambda_um
     low, high = min(x_um, z_um), max(x_um, z_um)

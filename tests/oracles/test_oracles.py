@@ -40,9 +40,7 @@ def test_published_cable_impedance(frequency, sealed, phase, semi, ratio):
     digits12(1e3 * abs(closed), sealed)
     assert math.degrees(cmath.phase(closed)) == pytest.approx(phase, rel=1e-11, abs=1e-12)
     digits12(1e3 * abs(infinite_cable.input_impedance_GOhm(P, frequency, None)), semi)
-    digits12(
-        abs(infinite_cable.sealed_transfer_impedance_GOhm(P, frequency, 1000.0, 0.0, 1000.0) / closed), ratio
-    )
+    digits12(abs(infinite_cable.sealed_transfer_impedance_GOhm(P, frequency, 1000.0, 0.0, 1000.0) / closed), ratio)
     Z = dense.cell_impedance_GOhm(one, 2e-3j * math.pi * frequency)
     assert Z[0, 0] == pytest.approx(closed, rel=1e-12)
     digits12(abs(Z[1, 0] / Z[0, 0]), ratio)
@@ -70,13 +68,9 @@ def test_published_steady_state():
 def test_finite_elements_agree_with_dense_on_a_ragged_tree_and_converge():
     for frequency in (0.0, 30.0, 300.0):
         exact = dense.cell_impedance_GOhm(typed.RAGGED, 2e-3j * math.pi * frequency)
-        np.testing.assert_allclose(
-            finite_elements.impedance_GOhm(typed.RAGGED, frequency, 80), exact, rtol=1e-6
-        )
+        np.testing.assert_allclose(finite_elements.impedance_GOhm(typed.RAGGED, frequency, 80), exact, rtol=1e-6)
     exact = dense.cell_impedance_GOhm(typed.RAGGED, 0.2j * math.pi)
-    errors = [
-        np.abs(finite_elements.impedance_GOhm(typed.RAGGED, 100.0, n) - exact).max() for n in (5, 10, 20)
-    ]
+    errors = [np.abs(finite_elements.impedance_GOhm(typed.RAGGED, 100.0, n) - exact).max() for n in (5, 10, 20)]
     np.testing.assert_allclose(np.log2(np.divide(errors[:-1], errors[1:])), 4.0, atol=0.3)
 
 

@@ -118,15 +118,10 @@ def test_compartments_with_uniform_conductance_obey_the_identity_of_the_active_c
     runs = [compartments.mean_and_covariance(cell, [source], n) for n in (6, 12, 24)]
     np.testing.assert_allclose(runs[0][0], uniform, rtol=1e-11)
     active = Cell(
-        tuple(
-            Cylinder(c.parent, c.child, c.length_um, c.diameter_um, 10.0 / (leak + tonic))
-            for c in cell.cylinders
-        )
+        tuple(Cylinder(c.parent, c.child, c.length_um, c.diameter_um, 10.0 / (leak + tonic)) for c in cell.cylinders)
     )
     charge = source.event_area * (70.0 - uniform)
-    exact = laplace_identity.covariance_mV2(
-        active, [0, 1, 2], (0.4, 3.0), charge, area_density * 0.004 / 0.01
-    )
+    exact = laplace_identity.covariance_mV2(active, [0, 1, 2], (0.4, 3.0), charge, area_density * 0.004 / 0.01)
     np.testing.assert_allclose(compartments.richardson([r[1][0] for r in runs]), exact, rtol=2e-6)
 
 

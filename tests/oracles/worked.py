@@ -33,9 +33,7 @@ def sphere_current():
 
         def kappa(n):
             """Cumulant: A^n (e^(-t/tau) - e^(-t/tau_s))^n expanded and integrated term by term."""
-            return A**n * mp.fsum(
-                (-1) ** k * mp.binomial(n, k) / ((n - k) / tau + k / tau_s) for k in range(n + 1)
-            )
+            return A**n * mp.fsum((-1) ** k * mp.binomial(n, k) / ((n - k) / tau + k / tau_s) for k in range(n + 1))
 
         omega = 2 * mp.pi * 10 / 1000
         rho = (tau * mp.exp(-10 / tau) - tau_s * mp.exp(-10 / tau_s)) / (tau - tau_s)

@@ -7,9 +7,9 @@ import cmath
 import mpmath as mp
 import numpy as np
 import pytest
-from oracles.dense import cylinder_coherent_mp, cylinder_noise_mp
 
 from cable.theory.cylinder import cylinder_form, mean_square_along, spread_current
+from oracles.dense import cylinder_coherent_mp, cylinder_noise_mp
 from tolerances import ROUND_OFF
 
 MODULI = [1e-8, 1e-4, 0.01, 0.3, 0.499, 0.501, 0.6, 1.0, 3.0, 20.0, 300.0, 1e3]

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import time
+from itertools import pairwise
 
 import numpy as np
 import pytest
@@ -32,7 +33,7 @@ def test_transform_is_the_integral(name: str, omega: float) -> None:
         edges = [0.0, *np.geomspace(0.05, end, 14)]
         return sum(
             quad(lambda t: float(kernel.value(t)) * wave(omega * t), a, b, epsabs=1e-13, limit=400)[0]
-            for a, b in zip(edges[:-1], edges[1:], strict=True)
+            for a, b in pairwise(edges)
         )
 
     want = integral(np.cos) - 1j * integral(np.sin)

@@ -12,9 +12,21 @@ from tolerances import ROUND_OFF
 FREQUENCIES_HZ = [1.0, 5.0, 10.0, 20.0, 50.0, 200.0]
 # r (1 - |p|²)/|1 - p|² at r = 20/s; Bartlett 1963, Cox & Lewis 1966 (from memory), derived, verified by simulation
 TABLE = {
-    "gamma 2": (SpikeTrain.gamma(2), 10.0, [10.061306856, 11.3360846428, 13.8151354184, 17.1159956086, 19.3910332154, 19.9596351192]),
-    "gamma 4": (SpikeTrain.gamma(4), 5.0, [5.03863610151, 6.01121794907, 9.35301719073, 17.8342091464, 20.0802431508, 20.0006307781]),
-    "dead time": (SpikeTrain.dead_time(10.0), 12.8, [12.8028635876, 12.8716407284, 13.0871608497, 13.9556664931, 19.5059095394, 20.0]),
+    "gamma 2": (
+        SpikeTrain.gamma(2),
+        10.0,
+        [10.061306856, 11.3360846428, 13.8151354184, 17.1159956086, 19.3910332154, 19.9596351192],
+    ),
+    "gamma 4": (
+        SpikeTrain.gamma(4),
+        5.0,
+        [5.03863610151, 6.01121794907, 9.35301719073, 17.8342091464, 20.0802431508, 20.0006307781],
+    ),
+    "dead time": (
+        SpikeTrain.dead_time(10.0),
+        12.8,
+        [12.8028635876, 12.8716407284, 13.0871608497, 13.9556664931, 19.5059095394, 20.0],
+    ),
 }
 
 
@@ -26,7 +38,10 @@ def test_published_table(name: str) -> None:
     assert 20 * float(train.spectrum_over_rate(np.zeros(1), 20.0)[0]) == pytest.approx(at_zero, rel=ROUND_OFF)
 
 
-@pytest.mark.parametrize(("train", "rate"), [(SpikeTrain.gamma(3), 12.0), (SpikeTrain.gamma(5.5), 40.0), (SpikeTrain.dead_time(6.0), 30.0)])
+@pytest.mark.parametrize(
+    ("train", "rate"),
+    [(SpikeTrain.gamma(3), 12.0), (SpikeTrain.gamma(5.5), 40.0), (SpikeTrain.dead_time(6.0), 30.0)],
+)
 def test_poles_make_the_interval_transform_one(train: SpikeTrain, rate: float) -> None:
     for pole in train.poles_per_ms(rate):
         s = -complex(pole)

@@ -16,9 +16,7 @@ def map_(
     out: Annotated[str, typer.Option(metavar="M.png|.svg|.pdf", help="The figure.")],
     quantity: Quantity = None,
     input_: ShareInput = None,
-    plane: Annotated[
-        str | None, typer.Option(metavar="xy|xz|yz", help="The plane to draw; else the flattest.")
-    ] = None,
+    plane: Annotated[str | None, typer.Option(metavar="xy|xz|yz", help="The plane to draw; else the flattest.")] = None,
     tolerance: Tolerance = 1e-9,
     force: Force = False,
 ) -> None:
@@ -31,9 +29,7 @@ def map_(
     from cable.desk.terminal import mention_findings, say_written
 
     if plane not in (None, "xy", "xz", "yz"):
-        raise DeskError(
-            f"--plane: found {quoted(plane)}, expected xy, xz or yz; leave it out for the flattest"
-        )
+        raise DeskError(f"--plane: found {quoted(plane)}, expected xy, xz or yz; leave it out for the flattest")
     read = read_scenario(scenario)
     names = [i.name for i in read.model.inputs]
     words = [quantity] if quantity else ["share"] if input_ else ["mean", "sd"]

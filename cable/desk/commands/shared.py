@@ -18,7 +18,5 @@ Quantity = Annotated[
 ]
 ShareInput = Annotated[
     list[str] | None,
-    typer.Option(
-        "--input", metavar="NAME", help="An input whose share of the variance is shown; repeatable."
-    ),
+    typer.Option("--input", metavar="NAME", help="An input whose share of the variance is shown; repeatable."),
 ]

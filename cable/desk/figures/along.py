@@ -76,9 +76,7 @@ def _rest(axes: Axes, field: Fluctuations, distance: Floats, values: Floats) -> 
     points = np.stack([distance, values], axis=1)
     lines = np.stack([points[parent[edges]], points[edges]], axis=1)
     axes.add_collection(
-        LineCollection(
-            list(lines), colors=PALE, linewidths=0.5, rasterized=len(edges) > RASTER_ABOVE, zorder=3
-        ),
+        LineCollection(list(lines), colors=PALE, linewidths=0.5, rasterized=len(edges) > RASTER_ABOVE, zorder=3),
         autolim=False,
     )
 

@@ -46,8 +46,8 @@ def place_names(
     """
     if not marks:
         return
-    canvas = FigureCanvasAgg(axes.figure)  # type: ignore[arg-type]
-    renderer = canvas.get_renderer()  # type: ignore[no-untyped-call]
+    canvas = FigureCanvasAgg(axes.get_figure(root=True))
+    renderer = canvas.get_renderer()
     per_pt = axes.figure.dpi / 72
     to_pixels = axes.transData.transform
     dots = to_pixels(np.asarray(drawing, dtype=float).reshape(-1, 2)) / per_pt

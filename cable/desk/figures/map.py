@@ -122,9 +122,7 @@ def draw_map(
     head = shown(title, int(per_line * 0.72))
     page.text(edge, 1 - EDGE_MM / plan.page_mm[1], head, va="top", fontsize=8, weight="bold")
     wrapped = "\n".join(textwrap.wrap(caption, per_line))
-    page.text(
-        edge, EDGE_MM / plan.page_mm[1], wrapped, va="bottom", fontsize=5.5, color=GREY, linespacing=1.3
-    )
+    page.text(edge, EDGE_MM / plan.page_mm[1], wrapped, va="bottom", fontsize=5.5, color=GREY, linespacing=1.3)
     return page
 
 
@@ -163,9 +161,7 @@ def _draw_cell(axes: Axes, model: CableModel, plane: str, values: Floats, mm_per
     for row in np.flatnonzero(tree.shape.sphere_area_um2 > 0).tolist():
         radius = _sphere_radius_um(tree, row)
         face = colour_map()(norm(values[row]))
-        axes.add_patch(
-            Circle(tuple(flat[row]), radius, facecolor=face, edgecolor=INK, linewidth=0.5, zorder=3)
-        )
+        axes.add_patch(Circle(tuple(flat[row]), radius, facecolor=face, edgecolor=INK, linewidth=0.5, zorder=3))
     return norm
 
 
@@ -235,9 +231,7 @@ def _scale_bar(axes: Axes, mm_per_um: float) -> None:
     length = round_length(16.0 / mm_per_um)
     left, base = x0 + 1.0 / mm_per_um, y0 + 1.5 / mm_per_um
     axes.plot([left, left + length], [base, base], color=INK, linewidth=1.4, solid_capstyle="butt", zorder=12)
-    axes.text(
-        left + length / 2, base + 1.0 / mm_per_um, f"{length:g} µm", ha="center", va="bottom", fontsize=6.5
-    )
+    axes.text(left + length / 2, base + 1.0 / mm_per_um, f"{length:g} µm", ha="center", va="bottom", fontsize=6.5)
 
 
 def _caption(plane: str, mm_per_um: float) -> str:

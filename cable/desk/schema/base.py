@@ -34,17 +34,13 @@ def _is_kind(word: str) -> bool:
 
 def _known_repair(name: str) -> str:
     if name not in REPAIRS:
-        raise ValueError(
-            f"found {quoted(name)}, expected a repair that `inspect` names; {did_you_mean(name, REPAIRS)}"
-        )
+        raise ValueError(f"found {quoted(name)}, expected a repair that `inspect` names; {did_you_mean(name, REPAIRS)}")
     return name
 
 
 def _usable_name(name: str) -> str:
     if not name.strip() or not name.isprintable():
-        raise ValueError(
-            f"found {quoted(name)}, expected a name that can be read; give one without control characters"
-        )
+        raise ValueError(f"found {quoted(name)}, expected a name that can be read; give one without control characters")
     return name
 
 

@@ -26,9 +26,7 @@ class Shrinkage(Section):
 class Cell(Section):
     """[cell]"""
 
-    morphology: str = Field(
-        min_length=1, max_length=1000, description="the SWC file, relative to the scenario"
-    )
+    morphology: str = Field(min_length=1, max_length=1000, description="the SWC file, relative to the scenario")
     omit: list[Kind] = Field(default=[], description="kinds left out of the electrical model")
     repairs: list[Repair] = Field(default=[], description="named repairs")
     shrinkage: Shrinkage = Field(default=Shrinkage(), description="{ xy = 1.0, z = 1.0 }")
@@ -40,25 +38,19 @@ class MembraneZoneSection(Section):
     where: ZoneSection = Field(description="the filters of the zone")
     axial_resistivity_ohm_cm: Positive | None = Field(default=None, description="axial resistivity, Ω cm")
     capacitance_uF_cm2: Positive | None = Field(default=None, description="specific capacitance, µF/cm²")
-    resistance_ohm_cm2: Positive | None = Field(
-        default=None, description="specific membrane resistance, Ω cm²"
-    )
+    resistance_ohm_cm2: Positive | None = Field(default=None, description="specific membrane resistance, Ω cm²")
     rest_mV: float | None = Field(default=None, description="resting potential, mV")
     spine_factor: Positive | None = Field(default=None, description="membrane area per bare area")
 
     @model_validator(mode="after")
     def _sets_something(self) -> Self:
         if all(getattr(self, name) is None for name in MEMBRANE_VALUES):
-            raise ValueError(
-                f"found no value that differs here, expected at least one of {choices(MEMBRANE_VALUES)}"
-            )
+            raise ValueError(f"found no value that differs here, expected at least one of {choices(MEMBRANE_VALUES)}")
         return self
 
     def membrane_zone(self) -> MembraneZone:
         """The zone of `cable`, which still knows only filters."""
-        return MembraneZone(
-            where=self.where.zone(), **{name: getattr(self, name) for name in MEMBRANE_VALUES}
-        )
+        return MembraneZone(where=self.where.zone(), **{name: getattr(self, name) for name in MEMBRANE_VALUES})
 
 
 class MembraneSection(Section):

@@ -29,9 +29,7 @@ class KernelSection(Section):
         given = {name for name in type(self).model_fields if getattr(self, name) is not None}
         if given not in ways:
             expected = choices(["{ " + ", ".join(sorted(way, reverse=True)) + " }" for way in ways])
-            raise ValueError(
-                f"found {choices(sorted(given), 'and') or 'no key'}, expected {expected}; keep one way"
-            )
+            raise ValueError(f"found {choices(sorted(given), 'and') or 'no key'}, expected {expected}; keep one way")
         if given == ways[1] and self.rise_ms >= self.decay_ms:  # type: ignore[operator]
             raise ValueError(
                 f"found rise_ms = {self.rise_ms:g} and decay_ms = {self.decay_ms:g}, expected a rise faster "
@@ -75,9 +73,7 @@ class SpikeTrainSection(Section):
     @property
     def chosen(self) -> str:
         """The process, told by its parameter where it is not named."""
-        implied = (
-            "gamma" if self.order is not None else "dead time" if self.dead_time_ms is not None else "poisson"
-        )
+        implied = "gamma" if self.order is not None else "dead time" if self.dead_time_ms is not None else "poisson"
         return self.process or implied
 
     def spike_train(self) -> SpikeTrain:
@@ -98,31 +94,21 @@ class InputSection(Section):
     density_per_um2: Positive | None = Field(default=None, description="synapses per µm² of membrane")
     count: Positive | None = Field(default=None, description="synapses in the whole zone")
     spread: Literal["length", "area"] = Field(default="length", description="how count is spread")
-    at: list[PlacedSection] | None = Field(
-        default=None, min_length=1, description="places such as [{ swc_id = 7 }]"
-    )
+    at: list[PlacedSection] | None = Field(default=None, min_length=1, description="places such as [{ swc_id = 7 }]")
     rate_Hz: NotNegative = Field(description="rate of one synapse, Hz")
     conductance_nS: NotNegative | None = Field(default=None, description="peak conductance of one event, nS")
     reversal_mV: float | None = Field(default=None, description="reversal potential, mV")
     current_pA: float | None = Field(default=None, description="peak current of one event, pA")
     kernel: KernelSection = Field(description="such as { rise_ms = 0.2, decay_ms = 2.0 }")
-    correlation: float = Field(
-        default=0.0, ge=0, le=1, description="pairwise correlation within the population"
-    )
-    spike_train: SpikeTrainSection = Field(
-        default=SpikeTrainSection(), description="the process of the spikes"
-    )
+    correlation: float = Field(default=0.0, ge=0, le=1, description="pairwise correlation within the population")
+    spike_train: SpikeTrainSection = Field(default=SpikeTrainSection(), description="the process of the spikes")
 
     @model_validator(mode="after")
     def _says_where_and_what(self) -> Self:
-        densities = [
-            k for k in ("density_per_um", "density_per_um2", "count") if getattr(self, k) is not None
-        ]
+        densities = [k for k in ("density_per_um", "density_per_um2", "count") if getattr(self, k) is not None]
         if self.at is not None and (self.where is not None or densities):
             extra = (["where"] if self.where is not None else []) + densities
-            raise ValueError(
-                f"found at and {choices(extra, 'and')}, expected either at, or where with a density"
-            )
+            raise ValueError(f"found at and {choices(extra, 'and')}, expected either at, or where with a density")
         if self.at is None and len(densities) != 1:
             found = choices(densities, "and") if densities else "no density"
             raise ValueError(
@@ -130,20 +116,14 @@ class InputSection(Section):
                 "or at; " + ("keep one" if densities else "add one")
             )
         if "spread" in self.model_fields_set and self.count is None:
-            raise ValueError(
-                "found spread without count, expected both; a density says by itself how it counts"
-            )
+            raise ValueError("found spread without count, expected both; a density says by itself how it counts")
         if (self.conductance_nS is None) == (self.current_pA is None):
             found = "neither" if self.current_pA is None else "both"
             remedy = "add one" if self.current_pA is None else "keep one"
-            raise ValueError(
-                f"found {found} of conductance_nS and current_pA, expected one of them; {remedy}"
-            )
+            raise ValueError(f"found {found} of conductance_nS and current_pA, expected one of them; {remedy}")
         if (self.conductance_nS is None) != (self.reversal_mV is None):
             have, lack = (
-                ("conductance_nS", "reversal_mV")
-                if self.reversal_mV is None
-                else ("reversal_mV", "conductance_nS")
+                ("conductance_nS", "reversal_mV") if self.reversal_mV is None else ("reversal_mV", "conductance_nS")
             )
             remedy = f"add {lack}" if self.current_pA is None else f"take {have} out: a current has none"
             raise ValueError(f"found {have} without {lack}, expected both; {remedy}")

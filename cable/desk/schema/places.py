@@ -19,13 +19,9 @@ class Filters(Section):
     kinds: list[Kind] | None = Field(
         default=None, min_length=1, description="kinds such as basal, apical, or SWC codes"
     )
-    branch_order: Range | None = Field(
-        default=None, description="[from, to], branch points passed from the root"
-    )
+    branch_order: Range | None = Field(default=None, description="[from, to], branch points passed from the root")
     radius_um: Range | None = Field(default=None, description="[from, to], µm")
-    height_um: Range | None = Field(
-        default=None, description="[from, to] from the soma along height_axis, µm"
-    )
+    height_um: Range | None = Field(default=None, description="[from, to] from the soma along height_axis, µm")
     height_axis: Literal["x", "y", "z"] = Field(default="y", description="the axis of height_um")
     subtree_of: int | None = Field(default=None, description="an SWC id")
 
@@ -49,18 +45,14 @@ class AtSection(Filters):
     """`at` of a site: an SWC id with a fraction, or one path distance with filters."""
 
     swc_id: int | None = Field(default=None, description="an SWC id")
-    fraction: float = Field(
-        default=1.0, ge=0, le=1, description="0 at the parent of the point, 1 at the point"
-    )
+    fraction: float = Field(default=1.0, ge=0, le=1, description="0 at the parent of the point, 1 at the point")
     path_um: NotNegative | None = Field(default=None, description="one distance from the root, µm")
 
     @model_validator(mode="after")
     def _one_way(self) -> Self:
         if (self.swc_id is None) == (self.path_um is None):
             found = "neither" if self.swc_id is None else "both"
-            raise ValueError(
-                f"found {found} of swc_id and path_um, expected one of them (path_um with filters)"
-            )
+            raise ValueError(f"found {found} of swc_id and path_um, expected one of them (path_um with filters)")
         unused = set(FILTERS) if self.swc_id is not None else {"fraction"}
         extra = sorted(unused & self.model_fields_set)
         if extra:

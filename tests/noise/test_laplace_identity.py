@@ -11,11 +11,15 @@ from pathlib import Path
 import numpy as np
 import pytest
 from numpy.testing import assert_allclose
-from oracles.laplace_identity import covariance_mV2, derivative_covariance_mV2_per_ms2, transfer_impedance_GOhm
-from oracles.plain import Cell, Cylinder, Sphere
 
 from cable import CableModel, Kernel, Membrane, SynapticInput
 from morphology import CellTree, Zone
+from oracles.laplace_identity import (
+    covariance_mV2,
+    derivative_covariance_mV2_per_ms2,
+    transfer_impedance_GOhm,
+)
+from oracles.plain import Cell, Cylinder, Sphere
 from tolerances import IDENTITY
 
 DATA = Path(__file__).parent.parent / "data"
@@ -50,7 +54,13 @@ def plain_cell(table: np.ndarray) -> Cell:
 
 def stepped_tree(table: np.ndarray) -> tuple[CellTree, np.ndarray]:
     """The tree with a second row at the parent's place before each edge, and the new row of each old one."""
-    parent, kinds, xyz, radius, at = [-1], [1], [table[0, 2:5]], [table[0, 5]], np.zeros(len(table), dtype=int)
+    parent, kinds, xyz, radius, at = (
+        [-1],
+        [1],
+        [table[0, 2:5]],
+        [table[0, 5]],
+        np.zeros(len(table), dtype=int),
+    )
     for row in range(1, len(table)):
         above = int(table[row, 6])
         if above > 0:
@@ -84,8 +94,17 @@ def test_variance_resistance_and_crossings(name: str) -> None:
         field = CableModel(tree, MEMBRANE, (one,), threshold_mV=threshold).fluctuations()
         want = np.diag(covariance_mV2(cell, nodes, poles, CHARGE_FC, per_pF_ms))
         assert_allclose(field.variance_mV2[at[nodes]], want, rtol=IDENTITY)
-        assert_allclose(field.input_resistance_MOhm[at[nodes]], [1e3 * resistance[n, k] for k, n in enumerate(nodes)], rtol=IDENTITY)
+        assert_allclose(
+            field.input_resistance_MOhm[at[nodes]],
+            [1e3 * resistance[n, k] for k, n in enumerate(nodes)],
+            rtol=IDENTITY,
+        )
         if field.upcrossing_Hz is not None:
             slope = np.diag(derivative_covariance_mV2_per_ms2(cell, nodes, poles, CHARGE_FC, per_pF_ms))
-            rate = 1e3 / (2 * np.pi) * np.sqrt(slope / want) * np.exp(-((-60 - field.mean_mV[at[nodes]]) ** 2) / (2 * want))
+            rate = (
+                1e3
+                / (2 * np.pi)
+                * np.sqrt(slope / want)
+                * np.exp(-((-60 - field.mean_mV[at[nodes]]) ** 2) / (2 * want))
+            )
             assert_allclose(field.upcrossing_Hz[at[nodes]], rate, rtol=10 * IDENTITY)
