@@ -112,8 +112,8 @@ class Zone:
         )
         for limits, at_parent, at_point, at_sphere in linear:
             if limits is not None:
-                first, last = _inside(limits, at_parent, at_point)
-                low, high = np.maximum(low, first), np.minimum(high, last)
+                inner, outer = _inside(limits, at_parent, at_point)
+                low, high = np.maximum(low, inner), np.minimum(high, outer)
                 spheres &= (at_sphere >= limits[0]) & (at_sphere <= limits[1])
         outside = ~chosen | (low >= high)
         low[outside] = high[outside] = 0.0

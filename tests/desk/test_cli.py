@@ -88,7 +88,8 @@ def test_a_reader_that_leaves_early_is_no_error(folder):
         stderr=subprocess.PIPE,
     )
     process.stdout.close()
-    assert process.stderr.read() == b""
+    with process.stderr as errors:
+        assert errors.read() == b""
     assert process.wait(timeout=30) == 0
 
 

@@ -151,7 +151,8 @@ def test_files_are_what_they_claim_and_names_stay_text(run, edited):
         result = run("map", path, "--out", f"M.{ending}")
         assert (result.exit_code, result.output) == (0, "")
     folder = path.parent
-    assert Image.open(folder / "M.png").size[0] > 900
+    with Image.open(folder / "M.png") as picture:
+        assert picture.size[0] > 900
     svg = (folder / "M.svg").read_text()
     assert "&lt;$x$ &amp; co&gt;" in svg and "SD (mV)" in svg and "a $title$ &lt;/svg&gt;" in svg
     assert svg.count("</svg>") == 1
