@@ -188,7 +188,8 @@ class Site:
         shape, part = tree.shape, self.zone.resolve(tree)
         parent = np.maximum(tree.parent, 0)
         start = tree.path_um[parent]
-        reach = np.where(part.high > part.low, start + part.high * tree.edge_length_um, -np.inf)
+        inside = part.high > part.low
+        reach = np.where(inside, start + part.high * tree.edge_length_um, -np.inf)
         begin = start + part.low * tree.edge_length_um
         rows = np.flatnonzero((begin < path_um) & (path_um <= reach))
         if not rows.size:
@@ -199,7 +200,8 @@ class Site:
                 raise PlaceError(f"site {self.name!r}: no part of the cell passes its filters")
             raise PlaceError(
                 f"site {self.name!r}: no place at path_um = {path_um:g}; where its filters hold the path runs "
-                f"from {begin[part.high > part.low].min(initial=0.0):.4g} to {max(reach.max(), 0.0):.4g} µm"
+                f"from {begin[inside].min(initial=np.inf if inside.any() else 0.0):.4g} "
+                f"to {max(reach.max(), 0.0):.4g} µm"
             )
         if rows.size > 1:
             listed = ", ".join(f"{tree.ids[r]} ({kind_name(shape.kind[r])})" for r in rows[:6])

@@ -11,6 +11,8 @@ import typer
 from cable.desk.commands.along import along
 from cable.desk.commands.inspect import inspect
 from cable.desk.commands.map import map_
+from cable.desk.commands.pair import pair
+from cable.desk.commands.spectrum import spectrum
 from cable.desk.commands.start import start
 from cable.desk.commands.table import table
 from cable.desk.messages import version
@@ -31,6 +33,8 @@ app.command("start")(start)
 app.command("table")(table)
 app.command("map")(map_)
 app.command("along")(along)
+app.command("spectrum")(spectrum)
+app.command("pair")(pair)
 
 
 def _show_version(asked: bool) -> None:

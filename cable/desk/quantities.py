@@ -23,7 +23,10 @@ LABELS = {
     "correlation-time": "correlation time (ms)",
     "input-resistance": "input resistance (MΩ)",
     "share": "% of the variance",
+    "correlation": "correlation",
+    "lag": "lag (ms)",
 }
+WITH_SITE = ("correlation", "lag")
 COLUMNS = {
     "mean": "mean_mV",
     "sd": "sd_mV",
@@ -35,14 +38,21 @@ COLUMNS = {
 
 @dataclass(frozen=True)
 class Quantity:
-    """One quantity to show: its word on the command line, its label with the unit, its input for a share."""
+    """One quantity to show: its word on the command line, its label with the unit, its input for a share.
+
+    `partner` is the site that a correlation or lag is with.
+    """
 
     word: str
     label: str
     input: str | None = None
+    partner: str | None = None
 
     def values(self, field: Fluctuations) -> Floats:
         """(N,) the quantity at every point."""
+        if self.partner is not None:
+            shared = field.model.correlation_map(self.partner)
+            return shared.correlation if self.word == "correlation" else shared.lag_ms
         if self.input is None:
             return np.asarray(getattr(field, COLUMNS[self.word]), dtype=float)
         return _percent(field.variance_by_input_mV2[self.input], field.variance_mV2)
@@ -55,6 +65,12 @@ class Quantity:
         return _percent(part, np.asarray(table.columns["variance_mV2"], dtype=float))
 
 
+def with_site(word: str, site: str) -> Quantity:
+    """The correlation or the lag of every point with a site."""
+    label = f"correlation with {site}" if word == "correlation" else f"lag behind {site} (ms)"
+    return Quantity(word, label, partner=site)
+
+
 def quantities(word: str, inputs: Sequence[str], known_inputs: Sequence[str]) -> list[Quantity]:
     """The quantities that the options ask for: one, or one a named input for a share.
 
@@ -63,6 +79,8 @@ def quantities(word: str, inputs: Sequence[str], known_inputs: Sequence[str]) ->
     """
     if word not in LABELS:
         raise DeskError(f"--quantity: found {quoted(word)}, expected {choices(LABELS)}; {did_you_mean(word, LABELS)}")
+    if word in WITH_SITE:
+        raise DeskError(f"--quantity {word}: is drawn by the command map with --with SITE")
     if word != "share":
         if inputs:
             raise DeskError(f'--input: goes with --quantity share, found it with "{word}"; take it out')

@@ -19,13 +19,20 @@ if TYPE_CHECKING:
 Rows = NDArray[np.int64]
 
 
-def metadata(scenario: Scenario, field: Fluctuations) -> dict[str, Any]:
-    """What a result must carry to be trusted later: scenario, version, hash and certificate."""
+def origin(scenario: Scenario) -> dict[str, Any]:
+    """Where a result comes from: scenario, its hash, and the version."""
     return {
         "title": scenario.title,
         "scenario": scenario.path.name,
         "scenario_sha256": scenario.sha256,
         "version": version(),
+    }
+
+
+def metadata(scenario: Scenario, field: Fluctuations) -> dict[str, Any]:
+    """What a site table must carry to be trusted later: its origin and its certificate."""
+    return {
+        **origin(scenario),
         "threshold_mV": scenario.model.threshold_mV,
         "upcrossing_note": field.upcrossing_note,
         "certificate": field.certificate.as_dict(),

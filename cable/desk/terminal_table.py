@@ -75,3 +75,20 @@ def thinned(table: Table, most: int) -> Table:
     rows = {round(i * (len(table) - 1) / (most - 1)) for i in range(most)}
     rows |= {i for i, name in enumerate(table.columns["site"]) if name}
     return Table({key: [column[i] for i in sorted(rows)] for key, column in table.plain().items()})
+
+
+def print_matrix(names: Sequence[str], matrix: Sequence[Sequence[float]], title: str = "") -> None:
+    """Correlations between all sites for reading."""
+    from rich import box
+    from rich.table import Table as Grid
+    from rich.text import Text
+
+    grid = Grid(box=box.SIMPLE_HEAD, pad_edge=False)
+    grid.add_column("correlation")
+    for name in names:
+        grid.add_column(Text(shown(name, 30)), justify="right")
+    for name, row in zip(names, matrix, strict=True):
+        grid.add_row(Text(shown(name, 60)), *(f"{value:.4f}" if value == value else "" for value in row))
+    if title:
+        console().print(Text(shown(title), style="bold"))
+    console().print(grid)

@@ -89,6 +89,24 @@ class Network:
         factors = eliminate(self.plan, shunt, coupling)
         return Response(self, omega, noise_self, noise_cross, share, factors)
 
+    def columns_at(self, s_per_ms: Complexes, nodes: list[int]) -> Columns:
+        """Transfer impedances from a few nodes to all, at complex Laplace frequencies s (F,), 1/ms."""
+        s = np.asarray(s_per_ms, dtype=complex)
+        axial = self.resistance_GOhm[:, None]
+        x2 = (axial * (self.conductance_nS[:, None] + s * self.capacitance_pF[:, None])).astype(complex, copy=False)
+        form = cylinder_form(x2)
+        even = form.shunt / axial
+        uneven = even * (2 * self.lean[:, None]) + self.tilt_nS[:, None]
+        shunt = self.to_nodes(even - uneven, even + uneven)
+        shunt += self.node_conductance_nS[:, None] + s * self.node_capacitance_pF[:, None]
+        factors = eliminate(self.plan, shunt, form.coupling / axial)
+        impedance = []
+        for node in nodes:
+            unit = np.zeros(shunt.shape, dtype=np.complex128)
+            unit[node] = 1.0
+            impedance.append(solve(factors, unit))
+        return Columns(x2, form.shunt / x2, np.array(impedance))
+
     @property
     def slowest_rate_per_ms(self) -> float:
         """A lower bound of all relaxation rates: the least conductance per capacitance of any part, 1/ms."""
@@ -96,6 +114,21 @@ class Network:
         lumped = self.node_capacitance_pF > 0
         ratios.append(self.node_conductance_nS[lumped] / self.node_capacitance_pF[lumped])
         return float(np.concatenate(ratios).min())
+
+
+@dataclass(frozen=True, eq=False)
+class Columns:
+    """What a few nodes hear of every place, at F complex frequencies.
+
+    Attributes:
+        x2: (E, F) squared electrotonic length of the pieces.
+        share: (E, F) tanh(x/2)/x.
+        impedance_GOhm: (nodes, E + 1, F) transfer impedances.
+    """
+
+    x2: Complexes
+    share: Complexes
+    impedance_GOhm: Complexes
 
 
 @dataclass(frozen=True, eq=False)

@@ -199,7 +199,7 @@ def fluctuations(model: CableModel, tolerance: float = 1e-9) -> Fluctuations:
     resistance = point.steady.input_impedance_GOhm()[nodes, 0].real * MOHM_PER_GOHM
     if count:
         omega0 = slowest_rate_per_ms(point)
-        reach = _range_u(point, power, wants_derivative, tolerance)
+        reach = range_u(point, power, wants_derivative, tolerance)
         crowded = any(one.spike_train.dead_time_ms > 0 for one in model.inputs)
         result = integrate(spectra, scale, omega0, tolerance, reach, analytic_strip(point, omega0), crowded)
         by_input, error, used = result.value[:, :count], result.relative_error, len(result.omega_per_ms)
@@ -238,7 +238,7 @@ def analytic_strip(point: OperatingPoint, omega0: float) -> float:
     return min([math.pi / 2, *(abs(cmath.asinh(pole).imag) for pole in poles)])
 
 
-def _range_u(point: OperatingPoint, power: Floats, derivative: bool, tolerance: float) -> float:
+def range_u(point: OperatingPoint, power: Floats, derivative: bool, tolerance: float) -> float:
     """Where in u = asinh(ω/ω₀) the integrand has fallen to the tolerance, from its power at high frequency."""
     corner = max([abs(p) for one in point.model.inputs for p in one.kernel.poles_per_ms])
     finite = power[np.isfinite(power)]

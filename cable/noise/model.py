@@ -6,13 +6,21 @@ from dataclasses import dataclass
 from functools import cached_property
 from typing import TYPE_CHECKING
 
+import numpy as np
+from numpy.typing import NDArray
+
 from cable.noise.refinement import Refined, refine
 from cable.theory.membrane import Membrane
 from cable.theory.synapse import SynapticInput
 from morphology import CellTree, Place, PlaceError, Site, Zone, ZonePart
 
 if TYPE_CHECKING:
+    from cable.noise.correlation import CorrelationMap
     from cable.noise.fluctuations import Fluctuations
+    from cable.noise.pairs import Pair
+    from cable.noise.spectra import Spectrum
+
+Floats = NDArray[np.float64]
 
 
 class ModelError(ValueError):
@@ -124,6 +132,16 @@ class CableModel:
         """All places that must be nodes."""
         return list(self.site_places.values()) + [place for places in self.input_places for place in places]
 
+    def node_of(self, site: str) -> int:
+        """The network node of a named site.
+
+        Raises:
+            KeyError: the model has no such site.
+        """
+        if site not in self.site_places:
+            raise KeyError(f"no site {site!r}; the sites are {', '.join(self.site_names)}")
+        return self.refined.point.layout.node_at(self.site_places[site])
+
     @cached_property
     def refined(self) -> Refined:
         """The operating point on a converged layout."""
@@ -141,3 +159,52 @@ class CableModel:
         from cable.noise.fluctuations import fluctuations
 
         return fluctuations(self, tolerance)
+
+    def spectrum(self, site: str, frequency_Hz: Floats, to: str | None = None) -> Spectrum:
+        """One-sided spectrum of the voltage at a site, in all and by input, and impedances, at frequencies (F,), Hz.
+
+        Args:
+            site: name of the site.
+            frequency_Hz: (F,) frequencies, at least 0.
+            to: another site, for the transfer impedance.
+
+        Raises:
+            KeyError: the model has no such site.
+        """
+        from cable.noise.spectra import spectrum
+
+        return spectrum(self, site, frequency_Hz, to)
+
+    def pair(self, a: str, b: str, lag_ms: Floats, frequency_Hz: Floats, tolerance: float = 1e-9) -> Pair:
+        """Covariance of two sites at lags (L,), ms, and their coherence and phase at frequencies (F,), Hz.
+
+        Args:
+            a, b: names of the sites; positive lags mean that b is later.
+            lag_ms: (L,) lags.
+            frequency_Hz: (F,) frequencies, at least 0.
+            tolerance: certified error of every covariance, relative to the geometric mean of the variances.
+
+        Raises:
+            KeyError: the model has no such site.
+            NotConverged: the tolerance cannot be reached.
+        """
+        from cable.noise.pairs import pair
+
+        return pair(self, a, b, lag_ms, frequency_Hz, tolerance)
+
+    def correlation_map(self, site: str, tolerance: float = 1e-6) -> CorrelationMap:
+        """Correlation, and lag, of every point of the tree with a site.
+
+        Raises:
+            KeyError: the model has no such site.
+            NotConverged: the tolerance cannot be reached.
+        """
+        from cable.noise.correlation import correlation_map
+
+        return correlation_map(self, site, tolerance)
+
+    def correlation_matrix(self, tolerance: float = 1e-9) -> Floats:
+        """(S, S) correlations at lag 0 between all sites, in the order of `site_names`."""
+        from cable.noise.pairs import correlation_matrix
+
+        return correlation_matrix(self, tolerance)

@@ -160,3 +160,39 @@ def mean_square_along(
     """
     a, b, u = at_a - far_from_ends, at_b - far_from_ends, far_from_ends
     return u * u + 2 * u * share * (a + b) + (a * a + b * b) * noise_self + 2 * a * b * noise_cross
+
+
+def noise_between(x2: Complexes, mirrored: Complexes) -> tuple[Complexes, Complexes]:
+    """E|J_a|²/q and E[J_a J_b*]/q continued to complex frequency, where conjugates become mirrored values.
+
+    Args:
+        x2: (..., F) squared electrotonic length at the Laplace frequency s.
+        mirrored: (..., F) the same at -s.
+
+    Returns:
+        The divided differences of x coth x and of -x csch x between the two; on the imaginary s axis they are
+        `CylinderForm.noise_self` and `noise_cross`.
+    """
+    total, product = x2 + mirrored, x2 * mirrored
+    largest = np.maximum(np.abs(x2), np.abs(mirrored))
+    short = largest <= SERIES_BELOW
+    terms = _terms_for(float(largest[short].max(initial=0.0)))
+    coupling, shunt = (_divided_series(name, terms, total, product) for name in ("coupling", "shunt"))
+    own, cross = coupling + shunt, -coupling
+    if not short.all():
+        long = ~short
+        one, other = (_large(np.atleast_2d(z[long])) for z in (x2, mirrored))
+        gap = (x2 - mirrored)[long]
+        crossing = (one.coupling - other.coupling)[0] / gap
+        own[long] = crossing + (one.shunt - other.shunt)[0] / gap
+        cross[long] = -crossing
+    return own, cross
+
+
+def _divided_series(name: str, terms: int, total: Complexes, product: Complexes) -> Complexes:
+    """The divided difference of a series between two points with this sum and product."""
+    coefficients = _series(name, terms)
+    b1, b2 = np.full(total.shape, coefficients[-1], dtype=np.complex128), np.zeros(total.shape, dtype=np.complex128)
+    for coefficient in coefficients[-2:0:-1]:
+        b1, b2 = coefficient + total * b1 - product * b2, b1
+    return b1

@@ -98,6 +98,24 @@ class SpikeTrain:
         step = hazard * self.dead_time_ms
         return 1 / (1 + 2 * step * np.sinc(2 * half / np.pi) + step**2 * np.sinc(half / np.pi) ** 2)
 
+    def spectrum_over_rate_at(self, s_per_ms: NDArray[np.complex128], rate_Hz: float) -> NDArray[np.complex128]:
+        """The same continued to complex s = iω (...), 1/ms: (1 - φ(s)φ(-s))/((1 - φ(s))(1 - φ(-s)))."""
+        s = np.asarray(s_per_ms, dtype=complex)
+        rate = rate_Hz * PER_MS_PER_HZ
+        if self.process == "poisson" or rate == 0:
+            return np.ones_like(s)
+        small = np.abs(s) < 1e-9 * rate
+        t = np.where(small, rate, s)
+        value = 1 + sum(phi / (1 - phi) for phi in (self._interval(t, rate), self._interval(-t, rate)))
+        return np.where(small, self.spectrum_over_rate(np.zeros(s.shape), rate_Hz), value)
+
+    def _interval(self, s: NDArray[np.complex128], rate: float) -> NDArray[np.complex128]:
+        """Laplace transform φ(s) of the density of one interval."""
+        if self.process == "gamma":
+            return (1 + s / (self.order * rate)) ** -self.order
+        hazard = rate / (1 - rate * self.dead_time_ms)
+        return hazard * np.exp(-s * self.dead_time_ms) / (hazard + s)
+
     def _gamma(self, omega: NDArray[np.float64], rate: float) -> NDArray[np.float64]:
         x = omega / (self.order * rate)
         log_p = -self.order * np.log1p(1j * x)

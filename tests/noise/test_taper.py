@@ -75,3 +75,32 @@ def test_certificate_bounds_the_real_error(seed: int) -> None:
     size = np.abs(fine.deviation_mV).max()
     difference = refined.point.deviation_mV[refined.point.layout.row_node] - fine.deviation_mV[fine.layout.row_node]
     assert np.abs(difference).max() <= 2 * refined.relative_error * size
+
+
+def test_driven_tapers_converge_with_the_fourth_power() -> None:
+    """Conductances by length on a taper: synapses, membrane and driving force lean differently along a piece."""
+    one = SynapticInput(
+        name="e",
+        where=Zone(),
+        density_per_um=0.6,
+        rate_Hz=4.0,
+        conductance_nS=0.8,
+        reversal_mV=0.0,
+        kernel=Kernel.alpha(1.5),
+    )
+    cell = CableModel(CellTree.from_text(SWC), MEMBRANE, (one,))
+    omega = np.array([0.0, 0.2, 1.0])
+
+    def spectrum(divide: int) -> np.ndarray:
+        point = operating_point(cell, np.full(3, divide))
+        return np.concatenate(
+            [
+                point.sources[0].spectrum(point.network.at(omega))[point.layout.row_node].ravel(),
+                point.deviation_mV[point.layout.row_node],
+            ]
+        )
+
+    finest = spectrum(128)
+    errors = [np.abs(spectrum(n) / finest - 1).max() for n in (4, 8, 16)]
+    orders = np.log2(np.array(errors[:-1]) / errors[1:])
+    assert orders[-1] == pytest.approx(4.0, abs=0.4), errors

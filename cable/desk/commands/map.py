@@ -16,6 +16,9 @@ def map_(
     out: Annotated[str, typer.Option(metavar="M.png|.svg|.pdf", help="The figure.")],
     quantity: Quantity = None,
     input_: ShareInput = None,
+    with_: Annotated[
+        str | None, typer.Option("--with", metavar="SITE", help="The site for the quantities correlation and lag.")
+    ] = None,
     plane: Annotated[str | None, typer.Option(metavar="xy|xz|yz", help="The plane to draw; else the flattest.")] = None,
     tolerance: Tolerance = 1e-9,
     force: Force = False,
@@ -23,8 +26,8 @@ def map_(
     """Draw the cell to scale in colour: mean and SD side by side, or the quantity that is asked for."""
     from cable.desk.figures.style import FIGURE_ENDINGS
     from cable.desk.files import output
-    from cable.desk.messages import DeskError, quoted
-    from cable.desk.quantities import quantities
+    from cable.desk.messages import DeskError, choices, quoted
+    from cable.desk.quantities import WITH_SITE, quantities, with_site
     from cable.desk.scenario import read_scenario
     from cable.desk.terminal import mention_findings, say_written
 
@@ -33,7 +36,16 @@ def map_(
     read = read_scenario(scenario)
     names = [i.name for i in read.model.inputs]
     words = [quantity] if quantity else ["share"] if input_ else ["mean", "sd"]
-    chosen = [q for word in words for q in quantities(word, input_ or [], names)]
+    if quantity in WITH_SITE and not input_:
+        if with_ is None:
+            raise DeskError(
+                f"--quantity {quantity}: needs --with SITE; the sites are {choices(read.model.site_names, 'and')}"
+            )
+        chosen = [with_site(quantity, read.site(with_))]
+    else:
+        if with_ is not None:
+            raise DeskError("--with: goes with --quantity correlation or lag; take it out")
+        chosen = [q for word in words for q in quantities(word, input_ or [], names)]
     target = output(out, FIGURE_ENDINGS, force, read.files)
     mention_findings(read)
     field = read.model.fluctuations(tolerance=tolerance)

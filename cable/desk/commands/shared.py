@@ -14,7 +14,10 @@ Tolerance = Annotated[
 ]
 Quantity = Annotated[
     str | None,
-    typer.Option(metavar="WORD", help="mean, sd, variance, correlation-time, input-resistance or share."),
+    typer.Option(
+        metavar="WORD",
+        help="mean, sd, variance, correlation-time, input-resistance or share; for map also correlation or lag.",
+    ),
 ]
 ShareInput = Annotated[
     list[str] | None,

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 import warnings
 from collections.abc import Iterator
 from contextlib import contextmanager
@@ -9,14 +10,17 @@ from functools import cache
 from typing import Any
 
 import matplotlib as mpl
+from matplotlib.axis import Axis
 from matplotlib.colors import ListedColormap
 from matplotlib.figure import Figure
+from matplotlib.ticker import FuncFormatter, LogLocator, NullFormatter
 
 from cable.desk.files import Output
 from cable.desk.messages import shown, version
 
 FIGURE_ENDINGS = (".png", ".svg", ".pdf")
 MM = 1 / 25.4  # inches
+SUPERSCRIPTS = str.maketrans("-0123456789", "⁻⁰¹²³⁴⁵⁶⁷⁸⁹")
 PT_PER_MM = 72 / 25.4
 COLUMN_MM, PAGE_MM = 85.0, 170.0
 INK, GREY, PALE = "#1a1a1a", "#6b6b6b", "#c9c9c9"
@@ -98,3 +102,16 @@ def save(drawn: Figure, target: Output, title: str) -> None:
     notes = {"Title": shown(title), **own[kind]}
     with target.writing() as stream:
         drawn.savefig(stream, format=kind, dpi=DPI if kind == "png" else RASTER_DPI, metadata=notes)
+
+
+def plain_powers(*axes: Axis) -> None:
+    """Label the decades of logarithmic axes as plain text: 0.1, 1, 10, and 10⁻³ where that is shorter."""
+
+    def label(value: float, _: int) -> str:
+        power = round(math.log10(value))
+        return f"{value:g}" if -1 <= power <= 3 else "10" + str(power).translate(SUPERSCRIPTS)
+
+    for axis in axes:
+        axis.set_major_locator(LogLocator(numticks=9))
+        axis.set_major_formatter(FuncFormatter(label))
+        axis.set_minor_formatter(NullFormatter())

@@ -1,0 +1,59 @@
+"""`cablenoise spectrum`: one electrode by frequency."""
+
+from __future__ import annotations
+
+from typing import Annotated
+
+import typer
+
+from cable.desk.commands.shared import Force, ScenarioArgument, SiteArgument
+from cable.desk.terminal import command
+
+
+@command
+def spectrum(
+    scenario: ScenarioArgument,
+    site: SiteArgument,
+    out: Annotated[
+        str | None, typer.Option(metavar="S.csv|.json|.npz|.png|.svg|.pdf", help="A table or a figure.")
+    ] = None,
+    from_Hz: Annotated[float, typer.Option("--from-Hz", help="Lowest frequency.")] = 0.1,
+    to_Hz: Annotated[float, typer.Option("--to-Hz", help="Highest frequency.")] = 1000.0,
+    points: Annotated[int, typer.Option(min=2, max=5000, help="Frequencies, evenly spaced in the logarithm.")] = 61,
+    to: Annotated[str | None, typer.Option(metavar="SITE", help="Add the transfer impedance to this site.")] = None,
+    force: Force = False,
+) -> None:
+    """Power spectral density of the voltage at a site, in all and by input, and its input impedance."""
+    import numpy as np
+
+    from cable.desk.files import output
+    from cable.desk.messages import DeskError
+    from cable.desk.scenario import read_scenario
+    from cable.desk.site_table import origin
+    from cable.desk.spectrum_table import spectrum_sentences, spectrum_table
+    from cable.desk.tables import TABLE_ENDINGS, write_table
+    from cable.desk.terminal import console, mention_findings, say_written
+
+    if not 0 < from_Hz < to_Hz < 1e7:
+        raise DeskError(
+            f"--from-Hz, --to-Hz: found {from_Hz:g} to {to_Hz:g}, expected 0 < from < to < 1e7; choose another range"
+        )
+    read = read_scenario(scenario)
+    names = read.site(site), None if to is None else read.site(to)
+    endings = (*TABLE_ENDINGS, ".png", ".svg", ".pdf")
+    target = output(out, endings, force, read.files) if out is not None else None
+    mention_findings(read)
+    found = read.model.spectrum(names[0], np.geomspace(from_Hz, to_Hz, points), names[1])
+    if target is None:
+        for sentence in spectrum_sentences(found):
+            console().print(sentence, markup=False)
+        return
+    if target.ending in TABLE_ENDINGS:
+        write_table(spectrum_table(found), target, {**origin(read), "site": site, "slope": found.slope})
+    else:
+        from cable.desk.figures.spectrum import draw_spectrum
+        from cable.desk.figures.style import save, styled
+
+        with styled():
+            save(draw_spectrum(found, read.title), target, read.title)
+    say_written(target.path)

@@ -1,0 +1,52 @@
+"""A spectrum drawn: density in all and by input above, impedance below."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+import numpy as np
+from matplotlib.figure import Figure
+
+from cable.desk.figures.style import COLUMN_MM, GREY, INK, figure, plain_powers
+from cable.desk.messages import shown
+
+if TYPE_CHECKING:
+    from cable.noise.spectra import Spectrum
+
+HEIGHT_MM, LEFT, RANGE = 96.0, 0.19, 1e7
+DASHES = ((0, ()), (0, (5, 2)), (0, (1.5, 1.5)), (0, (6, 2, 1.5, 2)), (0, (3, 1.2)))
+
+
+def draw_spectrum(spectrum: Spectrum, title: str = "") -> Figure:
+    """Density and impedance against frequency, both on logarithmic axes; call it inside `styled`."""
+    page = figure(COLUMN_MM, HEIGHT_MM)
+    upper = page.add_axes((LEFT, 0.44, 0.97 - LEFT, 0.46))
+    lower = page.add_axes((LEFT, 0.12, 0.97 - LEFT, 0.27), sharex=upper)
+    f = spectrum.frequency_Hz
+    upper.loglog(f, spectrum.psd_mV2_per_Hz, color=INK, linewidth=1.6, label="all inputs")
+    for k, (name, part) in enumerate(spectrum.psd_by_input_mV2_per_Hz.items()):
+        upper.loglog(f, part, color=GREY, linewidth=0.9, linestyle=DASHES[(k + 1) % len(DASHES)], label=shown(name, 30))
+    top = float(spectrum.psd_mV2_per_Hz.max(initial=0.0)) or 1.0
+    bottom = max(float(spectrum.psd_mV2_per_Hz.min(initial=top)), top / RANGE)
+    upper.set_ylim(bottom / 3, top * 2)
+    upper.legend(frameon=False, loc="lower left")
+    if np.isfinite(spectrum.slope):
+        at = f[-1] / 10**0.55
+        level = float(np.exp(np.interp(np.log(at), np.log(f), np.log(np.maximum(spectrum.psd_mV2_per_Hz, bottom)))))
+        text = f"slope {spectrum.slope:.2f}".replace("-", "−")
+        upper.annotate(text, (at, level), (5, 5), textcoords="offset points", fontsize=6.5)
+    lower.loglog(f, np.abs(spectrum.input_impedance_MOhm), color=INK, linewidth=1.3, label="input")
+    if spectrum.transfer_impedance_MOhm is not None:
+        label = f"transfer to {shown(spectrum.to or '', 24)}"
+        lower.loglog(f, np.abs(spectrum.transfer_impedance_MOhm), color=GREY, linestyle=DASHES[1], label=label)
+        lower.legend(frameon=False, loc="lower left")
+    plain_powers(upper.xaxis, upper.yaxis, lower.yaxis)
+    upper.set_ylabel("density (mV²/Hz)")
+    lower.set_ylabel("impedance (MΩ)")
+    lower.set_xlabel("frequency (Hz)")
+    upper.tick_params(labelbottom=False)
+    for axes in (upper, lower):
+        axes.yaxis.set_label_coords(-0.16, 0.5)
+    page.text(0.02, 0.985, shown(title, 52), va="top", fontsize=8, weight="bold")
+    page.text(0.02, 0.94, f"at {shown(spectrum.site, 60)}", va="top", fontsize=6.5, color=GREY)
+    return page

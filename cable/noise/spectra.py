@@ -1,0 +1,78 @@
+"""One electrode by frequency: spectrum of the voltage, input and transfer impedance, slope at high frequency."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+import numpy as np
+from numpy.typing import NDArray
+
+from cable.noise.cross import BLOCK, by_frequency
+from cable.noise.steepness import falls_as
+from cable.theory.units import MOHM_PER_GOHM, OMEGA_PER_MS_PER_HZ, one_sided_per_Hz
+
+if TYPE_CHECKING:
+    from cable.noise.model import CableModel
+
+Floats = NDArray[np.float64]
+
+
+@dataclass(frozen=True, eq=False)
+class Spectrum:
+    """What one site does by frequency.
+
+    Attributes:
+        site: its name.
+        frequency_Hz: (F,) frequencies.
+        psd_by_input_mV2_per_Hz: per input, (F,) one-sided power spectral density; the parts add up.
+        input_impedance_MOhm: (F,) complex input impedance.
+        to: name of the site of the transfer impedance, or None.
+        transfer_impedance_MOhm: (F,) complex transfer impedance between the two, or None.
+        falls_as: the power of 1/frequency that the spectrum falls with in the end; infinite where no synapse
+            is at hand, where it falls faster than any power.
+    """
+
+    site: str
+    frequency_Hz: Floats
+    psd_by_input_mV2_per_Hz: dict[str, Floats]
+    input_impedance_MOhm: NDArray[np.complex128]
+    to: str | None
+    transfer_impedance_MOhm: NDArray[np.complex128] | None
+    falls_as: float
+
+    @property
+    def psd_mV2_per_Hz(self) -> Floats:
+        """(F,) one-sided power spectral density of all inputs together, mV²/Hz."""
+        return np.sum([*self.psd_by_input_mV2_per_Hz.values(), np.zeros(len(self.frequency_Hz))], axis=0)
+
+    @property
+    def slope(self) -> float:
+        """Slope of log density against log frequency over the top decade of the frequencies; NaN for fewer than 3."""
+        top = self.frequency_Hz >= self.frequency_Hz.max(initial=0.0) / 10
+        top &= (self.frequency_Hz > 0) & (self.psd_mV2_per_Hz > 0)
+        if np.count_nonzero(top) < 3:
+            return float("nan")
+        return float(np.polyfit(np.log(self.frequency_Hz[top]), np.log(self.psd_mV2_per_Hz[top]), 1)[0])
+
+
+def spectrum(model: CableModel, site: str, frequency_Hz: Floats, to: str | None = None) -> Spectrum:
+    """See `CableModel.spectrum`."""
+    frequency = np.asarray(frequency_Hz, dtype=float)
+    point = model.refined.point
+    nodes = [model.node_of(site)] if to is None else [model.node_of(site), model.node_of(to)]
+    psd = one_sided_per_Hz(by_frequency(point, nodes[:1], frequency)[:, 0, 0].real)
+    s = 1j * OMEGA_PER_MS_PER_HZ * frequency
+    blocks = [
+        point.network.columns_at(s[k : k + BLOCK], nodes[:1]).impedance_GOhm[0][nodes] for k in range(0, len(s), BLOCK)
+    ]
+    z = MOHM_PER_GOHM * np.concatenate(blocks, axis=-1)
+    return Spectrum(
+        site=site,
+        frequency_Hz=frequency,
+        psd_by_input_mV2_per_Hz={one.name: psd[k] for k, one in enumerate(model.inputs)},
+        input_impedance_MOhm=z[0],
+        to=to,
+        transfer_impedance_MOhm=None if to is None else z[1],
+        falls_as=float(falls_as(point)[nodes[0]]),
+    )

@@ -1,0 +1,92 @@
+"""The commands spectrum and pair, and the map of correlation, as a person meets them."""
+
+from __future__ import annotations
+
+import csv
+import json
+
+import numpy as np
+import pytest
+from PIL import Image
+
+
+def rows_of(path) -> list[dict[str, float]]:
+    with path.open(newline="", encoding="utf-8") as file:
+        return [{key: float(value) for key, value in row.items()} for row in csv.DictReader(file)]
+
+
+def test_spectrum_as_table_and_sentences(run, folder) -> None:
+    result = run(
+        "spectrum", folder / "stick.toml", "soma", "--out", folder / "S.csv", "--points", "7", "--to", "half way"
+    )
+    assert result.exit_code == 0, result.output
+    rows = rows_of(folder / "S.csv")
+    assert list(rows[0])[:2] == ["frequency_Hz", "psd_mV2_per_Hz"]
+    assert {"psd_excitation_mV2_per_Hz", "input_impedance_MOhm", "input_phase_rad", "transfer_impedance_MOhm"} <= set(
+        rows[0]
+    )
+    assert [row["frequency_Hz"] for row in rows] == pytest.approx(np.geomspace(0.1, 1000, 7))
+    for row in rows:
+        parts = row["psd_excitation_mV2_per_Hz"] + row["psd_inhibition_mV2_per_Hz"]
+        assert parts == pytest.approx(row["psd_mV2_per_Hz"], rel=1e-12)
+    told = run("spectrum", folder / "stick.toml", "soma")
+    assert "input impedance" in told.output and "mV²/Hz" in told.output
+
+
+def test_pair_as_document_and_table(run, folder) -> None:
+    for name in ("C.json", "C.csv"):
+        result = run("pair", folder / "stick.toml", "soma", "half way", "--out", folder / name, "--lag-ms", "40")
+        assert result.exit_code == 0, result.output
+    found = json.loads((folder / "C.json").read_text(encoding="utf-8"))
+    assert {"correlation", "lag_ms", "covariance_mV2", "frequency_Hz", "coherence", "phase_rad", "certificate"} <= set(
+        found
+    )
+    assert found["certificate"]["covariance_relative_error"] <= 1e-9
+    assert found["lag_ms"][0] == -40 and 0.0 in found["lag_ms"]
+    assert 0 < found["correlation"] < 1 and max(found["coherence"]) <= 1
+    rows = rows_of(folder / "C.csv")
+    assert [row["covariance_mV2"] for row in rows] == found["covariance_mV2"]
+    assert "covariance_inhibition_mV2" in rows[0]
+
+
+def test_all_correlations(run, folder) -> None:
+    told = run("pair", folder / "stick.toml", "--all")
+    assert told.exit_code == 0 and "1.0000" in told.output and "half way" in told.output
+
+
+@pytest.mark.parametrize(
+    ("words", "told"),
+    [
+        (["spectrum", "somma"], 'did you mean "soma"'),
+        (["spectrum", "soma", "--from-Hz", "10", "--to-Hz", "1"], "expected 0 < from < to"),
+        (["spectrum", "soma", "--out", "S.txt"], ".csv"),
+        (["pair", "soma"], "needs two sites, or --all"),
+        (["pair", "soma", "half wy"], 'did you mean "half way"'),
+        (["pair", "soma", "half way", "--lag-ms", "-3"], "--lag-ms"),
+        (["pair", "soma", "half way", "--all"], "takes no site"),
+        (["map", "--out", "M.png", "--quantity", "correlation"], "needs --with SITE"),
+        (["map", "--out", "M.png", "--with", "soma"], "goes with --quantity correlation or lag"),
+        (["along", "half way", "--quantity", "lag"], "command map"),
+    ],
+)
+def test_messages(run, folder, words: list[str], told: str) -> None:
+    result = run(words[0], folder / "stick.toml", *words[1:])
+    assert result.exit_code == 2
+    assert told in result.output and "Traceback" not in result.output
+
+
+@pytest.mark.parametrize("ending", ["png", "svg", "pdf"])
+def test_figures(run, folder, ending: str) -> None:
+    for words in (
+        ["spectrum", folder / "stick.toml", "soma", "--to", "half way"],
+        ["pair", folder / "stick.toml", "soma", "half way"],
+        ["map", folder / "stick.toml", "--quantity", "correlation", "--with", "soma"],
+    ):
+        path = folder / f"{words[0]}.{ending}"
+        assert run(*words, "--out", path).exit_code == 0
+        if ending == "png":
+            with Image.open(path) as picture:
+                shades = np.unique(np.asarray(picture.convert("L")))
+                assert picture.size[0] > 900 and len(shades) > 20
+        if ending == "svg":
+            assert "mathdefault" not in path.read_text(encoding="utf-8")
