@@ -12,6 +12,7 @@ from cable.desk.commands.along import along
 from cable.desk.commands.inspect import inspect
 from cable.desk.commands.map import map_
 from cable.desk.commands.pair import pair
+from cable.desk.commands.sources import sources
 from cable.desk.commands.spectrum import spectrum
 from cable.desk.commands.start import start
 from cable.desk.commands.table import table
@@ -35,6 +36,7 @@ app.command("map")(map_)
 app.command("along")(along)
 app.command("spectrum")(spectrum)
 app.command("pair")(pair)
+app.command("sources")(sources)
 
 
 def _show_version(asked: bool) -> None:

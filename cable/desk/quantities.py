@@ -14,8 +14,10 @@ from cable.desk.messages import DeskError, choices, did_you_mean, quoted
 if TYPE_CHECKING:
     from cable.desk.tables import Table
     from cable.noise.fluctuations import Fluctuations
+    from cable.noise.sources import Sources
 
 Floats = NDArray[np.float64]
+SOURCE_TOLERANCE = 1e-6  # for colours
 LABELS = {
     "mean": "mean (mV)",
     "sd": "SD (mV)",
@@ -25,8 +27,9 @@ LABELS = {
     "share": "% of the variance",
     "correlation": "correlation",
     "lag": "lag (ms)",
+    "source": "% of the variance per µm",
 }
-WITH_SITE = ("correlation", "lag")
+WITH_SITE = ("correlation", "lag", "source")
 COLUMNS = {
     "mean": "mean_mV",
     "sd": "sd_mV",
@@ -51,6 +54,8 @@ class Quantity:
     def values(self, field: Fluctuations) -> Floats:
         """(N,) the quantity at every point."""
         if self.partner is not None:
+            if self.word == "source":
+                return _per_um(field.model.sources(self.partner, SOURCE_TOLERANCE))
             shared = field.model.correlation_map(self.partner)
             return shared.correlation if self.word == "correlation" else shared.lag_ms
         if self.input is None:
@@ -66,8 +71,12 @@ class Quantity:
 
 
 def with_site(word: str, site: str) -> Quantity:
-    """The correlation or the lag of every point with a site."""
-    label = f"correlation with {site}" if word == "correlation" else f"lag behind {site} (ms)"
+    """The correlation or the lag of every point with a site, or what each point contributes to it."""
+    label = {
+        "correlation": f"correlation with {site}",
+        "lag": f"lag behind {site} (ms)",
+        "source": f"% of the variance at {site} per µm",
+    }[word]
     return Quantity(word, label, partner=site)
 
 
@@ -91,6 +100,13 @@ def quantities(word: str, inputs: Sequence[str], known_inputs: Sequence[str]) ->
         if name not in known_inputs:
             raise DeskError(f"--input: there is no input {quoted(name)}; {_list(known_inputs)}")
     return [Quantity(word, f"{name}: {LABELS[word]}", name) for name in dict.fromkeys(inputs)]
+
+
+def _per_um(sources: Sources) -> Floats:
+    """(N,) % of the variance per µm of cylinder; for a spherical soma per µm of its diameter."""
+    shape = sources.model.tree.shape
+    length = np.where(shape.sphere_area_um2 > 0, np.sqrt(shape.sphere_area_um2 / np.pi), shape.length_um)
+    return np.divide(100 * sources.variance_share, length, out=np.full(len(length), np.nan), where=length > 0)
 
 
 def _list(names: Sequence[str]) -> str:

@@ -47,9 +47,17 @@ class CorrelationMap:
 
 def spectra_with(sources: tuple[Source, ...], response: Response, node: int) -> Complexes:
     """(E + 1, F) cross-spectra S_xb = E[V_x V_b*] of all nodes x with the node b, all inputs together, mV²·ms."""
+    pick = np.zeros(len(response.network.parent))
+    pick[node] = 1.0
+    return apply_spectra(sources, response, pick)
+
+
+def apply_spectra(sources: tuple[Source, ...], response: Response, vector: Floats) -> Complexes:
+    """(E + 1, F) product of the matrix of all cross-spectra, Z W Zᴴ, with a real vector (E + 1,)."""
     network, omega = response.network, response.omega_per_ms
     parent = network.parent[1:]
-    heard = response.column(node).conj()
+    spread = np.repeat(vector[:, None], len(omega), axis=1).astype(np.complex128)
+    heard = solve(response.factors, spread).conj()
     near, far = heard[parent], heard[1:]
     own, cross = response.noise_self, response.noise_cross
     current, in_step = np.zeros(heard.shape, dtype=np.complex128), np.zeros(heard.shape, dtype=np.complex128)
@@ -63,7 +71,7 @@ def spectra_with(sources: tuple[Source, ...], response: Response, node: int) -> 
         current += source.node_strength[:, None] * ((1 - correlation) * colour) * heard
         if correlation > 0:
             voltage = response.voltages(source.piece_amplitude, source.piece_moment, source.node_amplitude)
-            in_step += correlation * colour * voltage * voltage[node].conj()
+            in_step += correlation * colour * voltage * (vector @ voltage.conj())
     return solve(response.factors, current) + in_step
 
 

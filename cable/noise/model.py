@@ -17,7 +17,9 @@ from morphology import CellTree, Place, PlaceError, Site, Zone, ZonePart
 if TYPE_CHECKING:
     from cable.noise.correlation import CorrelationMap
     from cable.noise.fluctuations import Fluctuations
+    from cable.noise.modes import Modes
     from cable.noise.pairs import Pair
+    from cable.noise.sources import Sources
     from cable.noise.spectra import Spectrum
 
 Floats = NDArray[np.float64]
@@ -202,6 +204,28 @@ class CableModel:
         from cable.noise.correlation import correlation_map
 
         return correlation_map(self, site, tolerance)
+
+    def sources(self, site: str, tolerance: float = 1e-9) -> Sources:
+        """Which cylinders and inputs make the variance and the mean at a site.
+
+        Raises:
+            KeyError: the model has no such site.
+            NotConverged: the tolerance cannot be reached.
+        """
+        from cable.noise.sources import sources
+
+        return sources(self, site, tolerance)
+
+    def modes(self, count: int = 10, seed: int = 0, tolerance: float = 1e-6) -> Modes:
+        """The leading modes of the voltage's covariance over the membrane.
+
+        Raises:
+            ValueError: fewer than one mode, or as many as the network has nodes.
+            NotConverged: the tolerance cannot be reached.
+        """
+        from cable.noise.modes import modes
+
+        return modes(self, count, seed, tolerance)
 
     def correlation_matrix(self, tolerance: float = 1e-9) -> Floats:
         """(S, S) correlations at lag 0 between all sites, in the order of `site_names`."""

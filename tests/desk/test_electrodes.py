@@ -49,6 +49,18 @@ def test_pair_as_document_and_table(run, folder) -> None:
     assert "covariance_inhibition_mV2" in rows[0]
 
 
+def test_sources_as_table_and_sentences(run, folder) -> None:
+    assert run("sources", folder / "stick.toml", "soma", "--out", folder / "C.csv").exit_code == 0
+    with (folder / "C.csv").open(newline="", encoding="utf-8") as file:
+        rows = list(csv.DictReader(file))
+    assert list(rows[0])[:3] == ["swc_id", "kind", "path_um"]
+    assert sum(float(row["variance_share"]) for row in rows) == pytest.approx(1.0, rel=1e-9)
+    parts = [sum(float(row[f"variance_share_{name}"]) for row in rows) for name in ("excitation", "inhibition")]
+    assert sum(parts) == pytest.approx(1.0, rel=1e-9) and min(parts) > 0
+    told = run("sources", folder / "stick.toml", "half way").output
+    assert "Half of the variance at half way comes from within" in told and "The mean is shifted by" in told
+
+
 def test_all_correlations(run, folder) -> None:
     told = run("pair", folder / "stick.toml", "--all")
     assert told.exit_code == 0 and "1.0000" in told.output and "half way" in told.output
@@ -60,12 +72,13 @@ def test_all_correlations(run, folder) -> None:
         (["spectrum", "somma"], 'did you mean "soma"'),
         (["spectrum", "soma", "--from-Hz", "10", "--to-Hz", "1"], "expected 0 < from < to"),
         (["spectrum", "soma", "--out", "S.txt"], ".csv"),
+        (["sources", "tip of it"], "there is no site"),
         (["pair", "soma"], "needs two sites, or --all"),
         (["pair", "soma", "half wy"], 'did you mean "half way"'),
         (["pair", "soma", "half way", "--lag-ms", "-3"], "--lag-ms"),
         (["pair", "soma", "half way", "--all"], "takes no site"),
         (["map", "--out", "M.png", "--quantity", "correlation"], "needs --with SITE"),
-        (["map", "--out", "M.png", "--with", "soma"], "goes with --quantity correlation or lag"),
+        (["map", "--out", "M.png", "--with", "soma"], "goes with --quantity correlation, lag or source"),
         (["along", "half way", "--quantity", "lag"], "command map"),
     ],
 )
@@ -81,6 +94,7 @@ def test_figures(run, folder, ending: str) -> None:
         ["spectrum", folder / "stick.toml", "soma", "--to", "half way"],
         ["pair", folder / "stick.toml", "soma", "half way"],
         ["map", folder / "stick.toml", "--quantity", "correlation", "--with", "soma"],
+        ["sources", folder / "stick.toml", "soma"],
     ):
         path = folder / f"{words[0]}.{ending}"
         assert run(*words, "--out", path).exit_code == 0

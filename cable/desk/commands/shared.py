@@ -16,7 +16,7 @@ Quantity = Annotated[
     str | None,
     typer.Option(
         metavar="WORD",
-        help="mean, sd, variance, correlation-time, input-resistance or share; for map also correlation or lag.",
+        help="mean, sd, variance, correlation-time, input-resistance, share; map: also correlation, lag, source.",
     ),
 ]
 ShareInput = Annotated[

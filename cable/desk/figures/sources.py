@@ -1,0 +1,62 @@
+"""The sources of a site drawn: how much of its variance arises at which distance from it, by input."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+import numpy as np
+from matplotlib.figure import Figure
+from numpy.typing import NDArray
+
+from cable.desk.figures.style import COLUMN_MM, GREY, INK, figure
+from cable.desk.messages import shown
+
+if TYPE_CHECKING:
+    from cable.noise.sources import Sources
+
+HEIGHT_MM, LEFT, BINS = 70.0, 0.15, 30
+FILLS = (("#4d4d4d", ""), ("#b8b8b8", ""), ("white", "////"), ("white", "...."), ("#e6e6e6", "xx"))
+
+
+def draw_sources(sources: Sources, title: str = "") -> Figure:
+    """Stacked bars by distance from the site, and the distance within which half arises; call it inside `styled`."""
+    page = figure(COLUMN_MM, HEIGHT_MM)
+    axes = page.add_axes((LEFT, 0.16, 0.97 - LEFT, 0.68))
+    distance, whole = sources.distance_um, sources.variance_mV2.sum() or np.nan
+    edges = _round_bins(float(distance.max()) or 1.0)
+    bottom = np.zeros(len(edges) - 1)
+    for k, (name, part) in enumerate(sources.variance_by_input_mV2.items()):
+        heights = 100 * np.histogram(distance, edges, weights=part / whole)[0]
+        fill, hatch = FILLS[k % len(FILLS)]
+        axes.bar(
+            edges[:-1],
+            heights,
+            np.diff(edges),
+            bottom,
+            align="edge",
+            color=fill,
+            hatch=hatch,
+            edgecolor=INK,
+            linewidth=0.4,
+            label=shown(name, 30),
+        )
+        bottom += heights
+    half = sources.half_within_um()
+    axes.axvline(half, color=GREY, linewidth=0.8, linestyle=(0, (4, 3)))
+    text = f"half within {half:.0f} µm"
+    axes.annotate(text, (half, bottom.max()), (4, 1), textcoords="offset points", fontsize=6.5, color=GREY)
+    axes.set_xlim(0.0, edges[-1])
+    axes.set_ylim(min(0.0, float(bottom.min())), float(bottom.max()) * 1.12 or 1.0)
+    axes.set_xlabel(f"distance from {shown(sources.site, 40)} along the tree (µm)")
+    axes.set_ylabel(f"% of the variance per {edges[1]:.3g} µm")
+    axes.legend(frameon=False, loc="upper right")
+    page.text(0.02, 0.98, shown(title, 52), va="top", fontsize=8, weight="bold")
+    page.text(0.02, 0.92, f"sources of the variance at {shown(sources.site, 50)}", va="top", fontsize=6.5, color=GREY)
+    return page
+
+
+def _round_bins(reach_um: float) -> NDArray[np.float64]:
+    """Edges of at most about `BINS` bins of a round width that cover `reach_um`."""
+    power = 10.0 ** np.floor(np.log10(reach_um / BINS))
+    width = power * next(step for step in (1, 2, 2.5, 5, 10) if power * step * BINS >= reach_um)
+    return width * np.arange(int(np.floor(reach_um / width)) + 2)
