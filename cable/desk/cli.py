@@ -11,6 +11,7 @@ import typer
 from cable.desk.commands.along import along
 from cable.desk.commands.inspect import inspect
 from cable.desk.commands.map import map_
+from cable.desk.commands.modes import modes
 from cable.desk.commands.pair import pair
 from cable.desk.commands.sources import sources
 from cable.desk.commands.spectrum import spectrum
@@ -37,6 +38,7 @@ app.command("along")(along)
 app.command("spectrum")(spectrum)
 app.command("pair")(pair)
 app.command("sources")(sources)
+app.command("modes")(modes)
 
 
 def _show_version(asked: bool) -> None:

@@ -61,6 +61,17 @@ def test_sources_as_table_and_sentences(run, folder) -> None:
     assert "Half of the variance at half way comes from within" in told and "The mean is shifted by" in told
 
 
+def test_modes_as_table_and_sentences(run, folder) -> None:
+    assert run("modes", folder / "stick.toml", "--count", "2", "--out", folder / "M.json").exit_code == 0
+    found = json.loads((folder / "M.json").read_text(encoding="utf-8"))
+    assert len(found["share"]) == 2 and 0 < found["share"][1] < found["share"][0] < 1
+    assert {"swc_id", "mode_1_mV", "mode_2_mV"} <= set(found["rows"][0])
+    told = run("modes", folder / "stick.toml", "--count", "3").output
+    assert "participation number" in told and "first 3 modes" in told
+    refused = run("modes", folder / "stick.toml", "--count", "100000")
+    assert refused.exit_code == 2 and "--count: expected 1 to" in refused.output
+
+
 def test_all_correlations(run, folder) -> None:
     told = run("pair", folder / "stick.toml", "--all")
     assert told.exit_code == 0 and "1.0000" in told.output and "half way" in told.output
@@ -95,6 +106,7 @@ def test_figures(run, folder, ending: str) -> None:
         ["pair", folder / "stick.toml", "soma", "half way"],
         ["map", folder / "stick.toml", "--quantity", "correlation", "--with", "soma"],
         ["sources", folder / "stick.toml", "soma"],
+        ["modes", folder / "stick.toml", "--count", "2"],
     ):
         path = folder / f"{words[0]}.{ending}"
         assert run(*words, "--out", path).exit_code == 0
