@@ -19,6 +19,7 @@ if TYPE_CHECKING:
     from cable.noise.fluctuations import Fluctuations
     from cable.noise.modes import Modes
     from cable.noise.pairs import Pair
+    from cable.noise.point_neuron import PointNeuron
     from cable.noise.sources import Sources
     from cable.noise.spectra import Spectrum
 
@@ -226,6 +227,17 @@ class CableModel:
         from cable.noise.modes import modes
 
         return modes(self, count, seed, tolerance)
+
+    def point_neuron(self, site: str = "soma") -> PointNeuron:
+        """The equivalent point neuron at a site.
+
+        Raises:
+            KeyError: the model has no such site.
+            NotConverged: the autocovariance cannot be certified, as with dead times.
+        """
+        from cable.noise.point_neuron import point_neuron
+
+        return point_neuron(self, site)
 
     def correlation_matrix(self, tolerance: float = 1e-9) -> Floats:
         """(S, S) correlations at lag 0 between all sites, in the order of `site_names`."""

@@ -72,6 +72,17 @@ def test_modes_as_table_and_sentences(run, folder) -> None:
     assert refused.exit_code == 2 and "--count: expected 1 to" in refused.output
 
 
+def test_point_neuron_as_table_and_sentences(run, folder) -> None:
+    assert run("point-neuron", folder / "stick.toml", "--out", folder / "P.csv").exit_code == 0
+    with (folder / "P.csv").open(newline="", encoding="utf-8") as file:
+        row = next(csv.DictReader(file))
+    assert row["site"] == "soma" and float(row["fit_error"]) < 0.05
+    assert float(row["capacitance_pF"]) * float(row["input_resistance_MOhm"]) * 1e-3 == pytest.approx(
+        float(row["time_constant_ms"])
+    )
+    assert "time constant" in run("point-neuron", folder / "stick.toml", "half way").output
+
+
 def test_all_correlations(run, folder) -> None:
     told = run("pair", folder / "stick.toml", "--all")
     assert told.exit_code == 0 and "1.0000" in told.output and "half way" in told.output
@@ -84,6 +95,7 @@ def test_all_correlations(run, folder) -> None:
         (["spectrum", "soma", "--from-Hz", "10", "--to-Hz", "1"], "expected 0 < from < to"),
         (["spectrum", "soma", "--out", "S.txt"], ".csv"),
         (["sources", "tip of it"], "there is no site"),
+        (["point-neuron", "sofa"], 'did you mean "soma"'),
         (["pair", "soma"], "needs two sites, or --all"),
         (["pair", "soma", "half wy"], 'did you mean "half way"'),
         (["pair", "soma", "half way", "--lag-ms", "-3"], "--lag-ms"),
