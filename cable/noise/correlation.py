@@ -14,8 +14,7 @@ from numpy.typing import NDArray
 
 from cable.network.elimination import solve
 from cable.network.network import Response
-from cable.network.quadrature import integrate
-from cable.noise.fluctuations import analytic_strip, range_u, slowest_rate_per_ms
+from cable.noise.integral import integrate_spectra, slowest_rate_per_ms
 from cable.noise.operating_point import Source, total_spectrum
 from cable.noise.steepness import falls_as
 
@@ -92,12 +91,9 @@ def correlation_map(model: CableModel, site: str, tolerance: float = 1e-6) -> Co
         at_site = variance[here] if here is not None else variance.min(where=variance > 0, initial=np.inf)
         return np.stack([np.sqrt(variance * at_site), variance], axis=1)
 
-    omega0 = slowest_rate_per_ms(point)
-    reach = range_u(point, falls_as(point)[rows], False, tolerance)
-    crowded = any(one.spike_train.dead_time_ms > 0 for one in model.inputs)
-    result = integrate(both, scale, omega0, tolerance, reach, analytic_strip(point, omega0), crowded)
+    result = integrate_spectra(point, both, scale, tolerance, falls_as(point)[rows])
     own = model.fluctuations(tolerance).at(site).variance_mV2
-    slow = np.array([SLOW * omega0])
+    slow = np.array([SLOW * slowest_rate_per_ms(point)])
     with np.errstate(divide="ignore", invalid="ignore"):
         correlation = result.value[:, 0] / np.sqrt(result.value[:, 1] * own)
     spectrum = spectra_with(point.sources, point.network.at(slow), node)[rows, 0]

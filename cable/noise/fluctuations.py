@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import cmath
 import math
 from dataclasses import dataclass
 from functools import cached_property
@@ -11,9 +10,8 @@ from typing import TYPE_CHECKING
 import numpy as np
 from numpy.typing import NDArray
 
-from cable.network.quadrature import integrate
 from cable.noise.certificate import Certificate
-from cable.noise.operating_point import OperatingPoint
+from cable.noise.integral import DERIVATIVE_FINITE_ABOVE, integrate_spectra
 from cable.noise.steepness import falls_as
 from cable.theory.units import MOHM_PER_GOHM
 from morphology import kind_name
@@ -22,7 +20,6 @@ if TYPE_CHECKING:
     from cable.noise.model import CableModel
 
 Floats = NDArray[np.float64]
-VARIANCE_FINITE_ABOVE, DERIVATIVE_FINITE_ABOVE = 1.0, 3.0  # powers of 1/ω that make ∫S dω, ∫ω²S dω finite
 
 
 @dataclass(frozen=True)
@@ -198,10 +195,7 @@ def fluctuations(model: CableModel, tolerance: float = 1e-9) -> Fluctuations:
 
     resistance = point.steady.input_impedance_GOhm()[nodes, 0].real * MOHM_PER_GOHM
     if count:
-        omega0 = slowest_rate_per_ms(point)
-        reach = range_u(point, power, wants_derivative, tolerance)
-        crowded = any(one.spike_train.dead_time_ms > 0 for one in model.inputs)
-        result = integrate(spectra, scale, omega0, tolerance, reach, analytic_strip(point, omega0), crowded)
+        result = integrate_spectra(point, spectra, scale, tolerance, power, wants_derivative)
         by_input, error, used = result.value[:, :count], result.relative_error, len(result.omega_per_ms)
         still = result.at_zero[:, :count].sum(axis=1)
         derivative = np.where(rough, np.nan, result.value[:, -1]) if wants_derivative else None
@@ -218,35 +212,6 @@ def fluctuations(model: CableModel, tolerance: float = 1e-9) -> Fluctuations:
         _resistance=resistance,
         _derivative=derivative,
     )
-
-
-def slowest_rate_per_ms(point: OperatingPoint) -> float:
-    """The slowest rate of the membrane, of all kernels and of all spike trains, 1/ms."""
-    inputs = point.model.inputs
-    kernels = [one.kernel.slowest_rate_per_ms for one in inputs]
-    trains = [abs(pole) for one in inputs for pole in one.spike_train.poles_per_ms(one.rate_Hz)]
-    return min([point.network.slowest_rate_per_ms, *kernels, *trains])
-
-
-def analytic_strip(point: OperatingPoint, omega0: float) -> float:
-    """Half width of the strip in u = asinh(ω/ω₀) that no pole of the kernels or spike trains enters."""
-    poles = [
-        1j * pole / omega0
-        for one in point.model.inputs
-        for pole in (*one.kernel.poles_per_ms, *one.spike_train.poles_per_ms(one.rate_Hz))
-    ]
-    return min([math.pi / 2, *(abs(cmath.asinh(pole).imag) for pole in poles)])
-
-
-def range_u(point: OperatingPoint, power: Floats, derivative: bool, tolerance: float) -> float:
-    """Where in u = asinh(ω/ω₀) the integrand has fallen to the tolerance, from its power at high frequency."""
-    corner = max([abs(p) for one in point.model.inputs for p in one.kernel.poles_per_ms])
-    finite = power[np.isfinite(power)]
-    decay = float(finite.min(initial=6.0)) - 1.0
-    if derivative:
-        smooth = finite[finite > DERIVATIVE_FINITE_ABOVE]
-        decay = min(decay, float(smooth.min(initial=6.0)) - 3.0)
-    return math.asinh(corner / slowest_rate_per_ms(point)) + math.log(1 / tolerance) / decay
 
 
 def _note(model: CableModel, rough: NDArray[np.bool_]) -> str:

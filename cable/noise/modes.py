@@ -14,9 +14,8 @@ from typing import TYPE_CHECKING
 import numpy as np
 from numpy.typing import NDArray
 
-from cable.network.quadrature import integrate
 from cable.noise.correlation import apply_spectra
-from cable.noise.fluctuations import analytic_strip, range_u, slowest_rate_per_ms
+from cable.noise.integral import integrate_spectra
 from cable.noise.operating_point import total_spectrum
 from cable.noise.steepness import falls_as
 
@@ -62,16 +61,12 @@ def modes(model: CableModel, count: int, seed: int, tolerance: float) -> Modes:
     np.add.at(area, point.layout.parent[1:], half)
     root_area = np.sqrt(area / area.sum())
 
-    omega0 = slowest_rate_per_ms(point)
-    crowded = any(one.spike_train.dead_time_ms > 0 for one in model.inputs)
-    found = integrate(
+    found = integrate_spectra(
+        point,
         lambda omega: total_spectrum(point.sources, point.network.at(omega)),
         lambda variance: variance,
-        omega0,
         tolerance,
-        range_u(point, falls_as(point), False, tolerance),
-        analytic_strip(point, omega0),
-        crowded,
+        falls_as(point),
     )
     omega, weights = found.omega_per_ms, found.weights
     blocks = [(point.network.at(omega[k : k + BLOCK]), weights[k : k + BLOCK]) for k in range(0, len(omega), BLOCK)]

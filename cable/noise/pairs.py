@@ -19,7 +19,7 @@ from numpy.typing import NDArray
 
 from cable.network.quadrature import NotConverged
 from cable.noise.cross import BLOCK, by_frequency, cross_spectra
-from cable.noise.fluctuations import analytic_strip, slowest_rate_per_ms
+from cable.noise.integral import analytic_strip, slowest_rate_per_ms
 
 if TYPE_CHECKING:
     from cable.noise.model import CableModel

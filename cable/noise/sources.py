@@ -16,8 +16,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from cable.network.network import Response
-from cable.network.quadrature import integrate
-from cable.noise.fluctuations import analytic_strip, range_u, slowest_rate_per_ms
+from cable.noise.integral import integrate_spectra
 from cable.noise.operating_point import OperatingPoint, Source
 from cable.noise.steepness import falls_as
 
@@ -94,10 +93,7 @@ def sources(model: CableModel, site: str, tolerance: float = 1e-9) -> Sources:
     def scale(integrals: Floats) -> Floats:
         return np.full(integrals.shape, np.abs(integrals[-1].sum()))
 
-    omega0 = slowest_rate_per_ms(point)
-    reach = range_u(point, falls_as(point)[[node]], False, tolerance)
-    crowded = any(one.spike_train.dead_time_ms > 0 for one in model.inputs)
-    result = integrate(by_row, scale, omega0, tolerance, reach, analytic_strip(point, omega0), crowded)
+    result = integrate_spectra(point, by_row, scale, tolerance, falls_as(point)[[node]])
     return Sources(
         model=model,
         site=site,

@@ -24,7 +24,7 @@ from scipy.sparse.linalg import splu
 
 from cable import CableModel, Kernel, Membrane, SynapticInput
 from cable.network.quadrature import integrate
-from cable.noise.fluctuations import analytic_strip, slowest_rate_per_ms
+from cable.noise.integral import analytic_strip, slowest_rate_per_ms
 from morphology import CellTree, Zone
 from morphology.growth import random_arbor
 

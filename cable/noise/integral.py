@@ -1,0 +1,72 @@
+"""Integrals of spectra over frequency, with the nodes that suit one cell and its inputs."""
+
+from __future__ import annotations
+
+import cmath
+import math
+from collections.abc import Callable
+
+import numpy as np
+from numpy.typing import NDArray
+
+from cable.network.quadrature import Integral, integrate
+from cable.noise.operating_point import OperatingPoint
+
+Floats = NDArray[np.float64]
+DERIVATIVE_FINITE_ABOVE = 3.0  # the power of 1/ω above which ∫ω²S dω is finite
+
+
+def integrate_spectra(
+    point: OperatingPoint,
+    spectra: Callable[[Floats], Floats],
+    scale: Callable[[Floats], Floats],
+    tolerance: float,
+    power: Floats,
+    derivative: bool = False,
+) -> Integral:
+    """(1/π)∫₀^∞ of spectra around an operating point, certified to `tolerance`.
+
+    Args:
+        point: the mean state; its membrane, kernels and spike trains place the nodes.
+        spectra: maps ω (F,) to values (..., F), even in ω.
+        scale: maps the integrals to the positive numbers that errors are measured by.
+        tolerance: wanted relative error.
+        power: the powers of 1/ω that the spectra fall with, see `cable.noise.steepness`.
+        derivative: whether ω² times a spectrum is among them.
+
+    Raises:
+        NotConverged: the tolerance cannot be reached.
+    """
+    omega0 = slowest_rate_per_ms(point)
+    reach = _range_u(point, power, derivative, tolerance)
+    crowded = any(one.spike_train.dead_time_ms > 0 for one in point.model.inputs)
+    return integrate(spectra, scale, omega0, tolerance, reach, analytic_strip(point, omega0), crowded)
+
+
+def slowest_rate_per_ms(point: OperatingPoint) -> float:
+    """The slowest rate of the membrane, of all kernels and of all spike trains, 1/ms."""
+    inputs = point.model.inputs
+    kernels = [one.kernel.slowest_rate_per_ms for one in inputs]
+    trains = [abs(pole) for one in inputs for pole in one.spike_train.poles_per_ms(one.rate_Hz)]
+    return min([point.network.slowest_rate_per_ms, *kernels, *trains])
+
+
+def analytic_strip(point: OperatingPoint, omega0: float) -> float:
+    """Half width of the strip in u = asinh(ω/ω₀) that no pole of the kernels or spike trains enters."""
+    poles = [
+        1j * pole / omega0
+        for one in point.model.inputs
+        for pole in (*one.kernel.poles_per_ms, *one.spike_train.poles_per_ms(one.rate_Hz))
+    ]
+    return min([math.pi / 2, *(abs(cmath.asinh(pole).imag) for pole in poles)])
+
+
+def _range_u(point: OperatingPoint, power: Floats, derivative: bool, tolerance: float) -> float:
+    """Where in u = asinh(ω/ω₀) the integrand has fallen to the tolerance, from its power at high frequency."""
+    corner = max([abs(p) for one in point.model.inputs for p in one.kernel.poles_per_ms])
+    finite = power[np.isfinite(power)]
+    decay = float(finite.min(initial=6.0)) - 1.0
+    if derivative:
+        smooth = finite[finite > DERIVATIVE_FINITE_ABOVE]
+        decay = min(decay, float(smooth.min(initial=6.0)) - 3.0)
+    return math.asinh(corner / slowest_rate_per_ms(point)) + math.log(1 / tolerance) / decay
