@@ -14,6 +14,7 @@ from cable.desk.commands.map import map_
 from cable.desk.commands.modes import modes
 from cable.desk.commands.pair import pair
 from cable.desk.commands.point_neuron import point_neuron
+from cable.desk.commands.record import record
 from cable.desk.commands.sources import sources
 from cable.desk.commands.spectrum import spectrum
 from cable.desk.commands.start import start
@@ -41,6 +42,7 @@ app.command("pair")(pair)
 app.command("sources")(sources)
 app.command("modes")(modes)
 app.command("point-neuron")(point_neuron)
+app.command("record")(record)
 
 
 def _show_version(asked: bool) -> None:

@@ -28,8 +28,9 @@ LABELS = {
     "correlation": "correlation",
     "lag": "lag (ms)",
     "source": "% of the variance per µm",
+    "charge-share": "% of the charge",
 }
-WITH_SITE = ("correlation", "lag", "source")
+WITH_SITE = ("correlation", "lag", "source", "charge-share")
 COLUMNS = {
     "mean": "mean_mV",
     "sd": "sd_mV",
@@ -56,6 +57,8 @@ class Quantity:
         if self.partner is not None:
             if self.word == "source":
                 return _per_um(field.model.sources(self.partner, SOURCE_TOLERANCE))
+            if self.word == "charge-share":
+                return _charge_percent(field, self.partner)
             shared = field.model.correlation_map(self.partner)
             return shared.correlation if self.word == "correlation" else shared.lag_ms
         if self.input is None:
@@ -76,6 +79,7 @@ def with_site(word: str, site: str) -> Quantity:
         "correlation": f"correlation with {site}",
         "lag": f"lag behind {site} (ms)",
         "source": f"% of the variance at {site} per µm",
+        "charge-share": f"% of the charge that the clamp at {site} sees",
     }[word]
     return Quantity(word, label, partner=site)
 
@@ -107,6 +111,12 @@ def _per_um(sources: Sources) -> Floats:
     shape = sources.model.tree.shape
     length = np.where(shape.sphere_area_um2 > 0, np.sqrt(shape.sphere_area_um2 / np.pi), shape.length_um)
     return np.divide(100 * sources.variance_share, length, out=np.full(len(length), np.nan), where=length > 0)
+
+
+def _charge_percent(field: Fluctuations, site: str) -> Floats:
+    if not field.model.electrode_at(site).clamps:
+        raise DeskError(f"--with: the electrode at {quoted(site)} is no voltage clamp, which charge-share needs")
+    return 100 * field.model.clamp_shares(site, SOURCE_TOLERANCE).charge_share
 
 
 def _list(names: Sequence[str]) -> str:

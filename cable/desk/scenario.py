@@ -93,6 +93,7 @@ def read_scenario(path: str | PathLike[str]) -> Scenario:
             sites=sites,
             threshold_mV=document.threshold.level_mV if document.threshold else None,
             title=document.title,
+            electrodes=tuple(one.electrode() for one in document.electrode),
         )
     except ModelError as error:
         raise ScenarioError(file, [Problem(error.key, shown(error.message, 1000))]) from None

@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 from numpy.typing import NDArray
 
-from cable.desk.messages import version
+from cable.desk.messages import choices, version
 from cable.desk.tables import Column, Table
 from morphology import kind_name
 
@@ -35,8 +35,17 @@ def metadata(scenario: Scenario, field: Fluctuations) -> dict[str, Any]:
         **origin(scenario),
         "threshold_mV": scenario.model.threshold_mV,
         "upcrossing_note": field.upcrossing_note,
+        "electrode_note": electrode_note(scenario.model),
         "certificate": field.certificate.as_dict(),
     }
+
+
+def electrode_note(model: CableModel) -> str:
+    """A sentence which says that electrodes load the cell; "" where there is none."""
+    if not model.electrodes:
+        return ""
+    places = choices([f"{one.site} ({one.mode})" for one in model.electrodes], "and")
+    return f"The cell is loaded by its electrodes at {places}; see `record` for the cell without them."
 
 
 def point_of_site(model: CableModel, name: str) -> int | None:

@@ -17,6 +17,7 @@ from numpy.typing import NDArray
 from scipy import sparse
 
 from cable.network.elimination import Factors, Impedances, eliminate, impedances, solve, variances
+from cable.network.loads import Load
 from cable.network.plan import Plan, plan_elimination
 from cable.theory.cylinder import cylinder_form
 
@@ -37,6 +38,7 @@ class Network:
         node_conductance_nS, node_capacitance_pF: (E + 1,) what is lumped at nodes (spheres, point synapses).
         lean: (E,) the centroid m of the piece's membrane, -1/2 to 1/2.
         tilt_nS: (E,) conductance to move from the near to the far end, for what is not spread like membrane.
+        loads: branches of resistance and capacitance at nodes.
     """
 
     parent: Ints
@@ -47,6 +49,7 @@ class Network:
     node_capacitance_pF: Floats
     lean: Floats
     tilt_nS: Floats
+    loads: tuple[Load, ...] = ()
 
     @cached_property
     def plan(self) -> Plan:
@@ -86,10 +89,12 @@ class Network:
             share[rows] = form.shunt / x2
         shunt = self.to_nodes(near, far)
         shunt += self.node_conductance_nS[:, None] + 1j * omega * self.node_capacitance_pF[:, None]
+        for load in self.loads:
+            shunt[load.node] += load.admittance_nS(1j * omega)
         factors = eliminate(self.plan, shunt, coupling)
         return Response(self, omega, noise_self, noise_cross, share, factors)
 
-    def columns_at(self, s_per_ms: Complexes, nodes: list[int]) -> Columns:
+    def columns_at(self, s_per_ms: NDArray[np.complexfloating], nodes: list[int]) -> Columns:
         """Transfer impedances from a few nodes to all, at complex Laplace frequencies s (F,), 1/ms."""
         s = np.asarray(s_per_ms, dtype=complex)
         axial = self.resistance_GOhm[:, None]
@@ -99,6 +104,8 @@ class Network:
         uneven = even * (2 * self.lean[:, None]) + self.tilt_nS[:, None]
         shunt = self.to_nodes(even - uneven, even + uneven)
         shunt += self.node_conductance_nS[:, None] + s * self.node_capacitance_pF[:, None]
+        for load in self.loads:
+            shunt[load.node] += load.admittance_nS(s)
         factors = eliminate(self.plan, shunt, form.coupling / axial)
         impedance = []
         for node in nodes:
@@ -107,13 +114,23 @@ class Network:
             impedance.append(solve(factors, unit))
         return Columns(x2, form.shunt / x2, np.array(impedance))
 
-    @property
+    @cached_property
     def slowest_rate_per_ms(self) -> float:
-        """A lower bound of all relaxation rates: the least conductance per capacitance of any part, 1/ms."""
+        """A lower bound of all relaxation rates: the least conductance per capacitance of any part, 1/ms.
+
+        Half of every conductance is set aside to discharge the k loads: V² at a load's node costs at least 1/Z of
+        the input resistance Z there, so that its capacitance relaxes no slower than 1/(C(R + 2kZ)) (derived here).
+        """
         ratios = [self.conductance_nS / self.capacitance_pF]
         lumped = self.node_capacitance_pF > 0
         ratios.append(self.node_conductance_nS[lumped] / self.node_capacitance_pF[lumped])
-        return float(np.concatenate(ratios).min())
+        bound = float(np.concatenate(ratios).min())
+        charged = [load for load in self.loads if load.capacitance_pF > 0]
+        if not charged:
+            return bound
+        steady = self.at(np.zeros(1)).input_impedance_GOhm()[:, 0].real
+        through = [one.resistance_GOhm + 2 * len(charged) * steady[one.node] for one in charged]
+        return min([bound / 2, *(1 / (one.capacitance_pF * r) for one, r in zip(charged, through, strict=True))])
 
 
 @dataclass(frozen=True, eq=False)

@@ -21,7 +21,7 @@ Complexes = NDArray[np.complex128]
 BLOCK = 8  # frequencies handled at once
 
 
-def cross_spectra(point: OperatingPoint, nodes: list[int], s_per_ms: Complexes) -> Complexes:
+def cross_spectra(point: OperatingPoint, nodes: list[int], s_per_ms: NDArray[np.complexfloating]) -> Complexes:
     """(inputs, nodes, nodes, F) cross-spectra S_ab at complex s (F,), 1/ms; two-sided per rad/ms, mV²·ms."""
     s = np.asarray(s_per_ms, dtype=complex)
     own: NDArray[np.generic]

@@ -38,7 +38,7 @@ def integrate_spectra(
         NotConverged: the tolerance cannot be reached.
     """
     omega0 = slowest_rate_per_ms(point)
-    reach = _range_u(point, power, derivative, tolerance)
+    reach = range_u(point, power, derivative, tolerance)
     crowded = any(one.spike_train.dead_time_ms > 0 for one in point.model.inputs)
     return integrate(spectra, scale, omega0, tolerance, reach, analytic_strip(point, omega0), crowded)
 
@@ -61,7 +61,7 @@ def analytic_strip(point: OperatingPoint, omega0: float) -> float:
     return min([math.pi / 2, *(abs(cmath.asinh(pole).imag) for pole in poles)])
 
 
-def _range_u(point: OperatingPoint, power: Floats, derivative: bool, tolerance: float) -> float:
+def range_u(point: OperatingPoint, power: Floats, derivative: bool, tolerance: float) -> float:
     """Where in u = asinh(ω/ω₀) the integrand has fallen to the tolerance, from its power at high frequency."""
     corner = max([abs(p) for one in point.model.inputs for p in one.kernel.poles_per_ms])
     finite = power[np.isfinite(power)]

@@ -9,17 +9,22 @@ from typing import TYPE_CHECKING
 import numpy as np
 from numpy.typing import NDArray
 
+from cable.network.layout import lay_out
 from cable.noise.refinement import Refined, refine
+from cable.theory.electrode import Electrode
 from cable.theory.membrane import Membrane
 from cable.theory.synapse import SynapticInput
 from morphology import CellTree, Place, PlaceError, Site, Zone, ZonePart
 
 if TYPE_CHECKING:
+    from cable.noise.clamp import ClampShares
     from cable.noise.correlation import CorrelationMap
     from cable.noise.fluctuations import Fluctuations
     from cable.noise.modes import Modes
     from cable.noise.pairs import Pair
     from cable.noise.point_neuron import PointNeuron
+    from cable.noise.recorded_pair import RecordedPair
+    from cable.noise.recordings import Recording
     from cable.noise.sources import Sources
     from cable.noise.spectra import Spectrum
 
@@ -45,9 +50,11 @@ class CableModel:
         sites: named points; "soma" is always the first site and need not be given.
         threshold_mV: the level whose upcrossings are counted, if any.
         title: a title for tables and figures.
+        electrodes: pipettes, each at a site of its own; all of them load the cell.
 
     Raises:
-        ModelError: a name used twice, a zone that selects nothing, a site that names no place or several.
+        ModelError: a name used twice, a zone that selects nothing, a site that names no place or several,
+            electrodes that share a site or have none.
     """
 
     tree: CellTree
@@ -56,10 +63,12 @@ class CableModel:
     sites: tuple[Site, ...] = ()
     threshold_mV: float | None = None
     title: str = ""
+    electrodes: tuple[Electrode, ...] = ()
 
     def __post_init__(self) -> None:
         object.__setattr__(self, "inputs", tuple(self.inputs))
         object.__setattr__(self, "sites", tuple(self.sites))
+        object.__setattr__(self, "electrodes", tuple(self.electrodes))
         for key, names in (
             ("input", [i.name for i in self.inputs]),
             ("site", ["soma", *(s.name for s in self.sites)]),
@@ -70,6 +79,7 @@ class CableModel:
                     extra = " (soma is always a site)" if key == "site" and name == "soma" else ""
                     raise ModelError(f"{key}[{place}].name", f"the name {name!r} is used twice{extra}; choose another")
         self.membrane_parts, self.input_parts, self.input_places, self.site_places  # noqa: B018 - checks them now
+        self._check_electrodes()
 
     def _part(self, zone: Zone, key: str) -> ZonePart:
         try:
@@ -124,6 +134,42 @@ class CableModel:
     def site_names(self) -> tuple[str, ...]:
         """Names of all sites, "soma" first."""
         return tuple(self.site_places)
+
+    def _check_electrodes(self) -> None:
+        for k, one in enumerate(self.electrodes):
+            key, before = f"electrode[{k}].site", self.electrodes[:k]
+            if one.site not in self.site_places:
+                known = ", ".join(self.site_names)
+                raise ModelError(key, f"found {one.site!r}, expected a site: {known}; correct it, or add a [[site]]")
+            if any(other.site == one.site for other in before):
+                raise ModelError(
+                    key, f"found a second electrode at {one.site!r}, expected one; name another [[site]] at the place"
+                )
+            rivals = [other.site for other in before if other.clamps and one.clamps]
+            if rivals:
+                layout = lay_out(self.tree, self.parts, self.places)
+                here = layout.node_at(self.site_places[one.site])
+                rivals = [name for name in rivals if layout.node_at(self.site_places[name]) == here]
+            if rivals:
+                raise ModelError(
+                    key,
+                    f"found a voltage clamp where {rivals[0]!r} is one already, expected one clamp a place; "
+                    "two would drive current through each other; move one or make it a current clamp",
+                )
+
+    @property
+    def electrode_places(self) -> list[tuple[Electrode, Place]]:
+        """Every electrode with its place."""
+        return [(one, self.site_places[one.site]) for one in self.electrodes]
+
+    @property
+    def reference_mV(self) -> float:
+        """The potential from which voltages count inside: what the first clamp holds, or else the rest.
+
+        Beside a clamp the current through it follows from a small difference to the potential that is held.
+        """
+        held = [one.holding_mV for one in self.electrodes if one.holding_mV is not None]
+        return float(held[0] if held else self.membrane.rest_mV)
 
     @property
     def parts(self) -> list[ZonePart]:
@@ -227,6 +273,51 @@ class CableModel:
         from cable.noise.modes import modes
 
         return modes(self, count, seed, tolerance)
+
+    def electrode_at(self, site: str) -> Electrode:
+        """The electrode at a site; where there is none, an ideal one that neither loads nor filters.
+
+        Raises:
+            KeyError: the model has no such site.
+        """
+        if site not in self.site_places:
+            raise KeyError(f"no site {site!r}; the sites are {', '.join(self.site_names)}")
+        return next((one for one in self.electrodes if one.site == site), Electrode(site=site))
+
+    def recording(self, site: str, tolerance: float = 1e-9) -> Recording:
+        """What the electrode at a site records, beside what is true, and how exact a record of some length is.
+
+        Raises:
+            KeyError: the model has no such site.
+            NotConverged: the tolerance cannot be reached.
+        """
+        from cable.noise.recordings import recording
+
+        return recording(self, site, tolerance)
+
+    def recorded_pair(self, a: str, b: str, tolerance: float = 1e-9) -> RecordedPair:
+        """The correlation of the records at two sites beside the true one, and how exact a record of it is.
+
+        Raises:
+            KeyError: the model has no such site.
+            ValueError: one site twice, or windows that differ.
+            NotConverged: the tolerance cannot be reached.
+        """
+        from cable.noise.recorded_pair import recorded_pair
+
+        return recorded_pair(self, a, b, tolerance)
+
+    def clamp_shares(self, site: str, tolerance: float = 1e-9) -> ClampShares:
+        """What the voltage clamp at a site sees of the synapses' charge and noise, and of the membrane.
+
+        Raises:
+            KeyError: the model has no such site.
+            ValueError: the electrode there is no voltage clamp.
+            NotConverged: the tolerance cannot be reached.
+        """
+        from cable.noise.clamp import clamp_shares
+
+        return clamp_shares(self, site, tolerance)
 
     def point_neuron(self, site: str = "soma") -> PointNeuron:
         """The equivalent point neuron at a site.

@@ -16,6 +16,7 @@ from numpy.typing import NDArray
 
 from cable.network.assembly import Passive, passive, synapse_numbers
 from cable.network.layout import Layout, lay_out
+from cable.network.loads import Load
 from cable.network.network import Network, Response
 from cable.theory.cylinder import mean_square_along, spread_current
 from cable.theory.synapse import SynapticInput
@@ -113,6 +114,14 @@ class OperatingPoint:
         return self.reference_mV + self.deviation_mV
 
     @cached_property
+    def electrode_load_nS(self) -> Floats:
+        """(E + 1,) steady conductance of seals and voltage clamps at every node."""
+        load = np.zeros(len(self.layout.parent))
+        for electrode, place in self.model.electrode_places:
+            load[self.layout.node_at(place)] += electrode.steady_load_nS
+        return load
+
+    @cached_property
     def sources(self) -> tuple[Source, ...]:
         """The inputs as current noise around this mean state."""
         return tuple(self._source(one, *numbers) for one, numbers in zip(self.model.inputs, self.numbers, strict=True))
@@ -187,7 +196,7 @@ def operating_point(model: CableModel, divide: NDArray[np.int64] | None = None) 
     cell = passive(layout, model.membrane, model.membrane_parts)
     conductance, node_conductance = cell.leak_nS.copy(), cell.node_leak_nS.copy()
     along = np.zeros_like(conductance)
-    reference = float(model.membrane.rest_mV)
+    reference = model.reference_mV
     drive = cell.leak_nS * (cell.rest_mV - reference)
     node_drive = cell.node_leak_nS * (cell.node_rest_mV - reference)
     moment = drive * layout.lean_of_area
@@ -203,6 +212,13 @@ def operating_point(model: CableModel, divide: NDArray[np.int64] | None = None) 
         node_drive += per_synapse * at_nodes
         moment += per_synapse * on_pieces * (layout.lean_of_area if one.by_area else layout.lean_of_length)
         along += 0.0 if one.by_area else mean * on_pieces
+    loads = []
+    for electrode, place in model.electrode_places:
+        node = layout.node_at(place)
+        node_conductance[node] += electrode.steady_load_nS
+        node_drive[node] += electrode.steady_current_pA(reference)
+        if electrode.pipette_capacitance_pF > 0:
+            loads.append(Load(node, electrode.resistance_GOhm, electrode.pipette_capacitance_pF))
     share = spread_current(np.asarray(cell.resistance_GOhm * conductance, dtype=np.complex128)).real
     network = Network(
         parent=layout.parent,
@@ -213,6 +229,7 @@ def operating_point(model: CableModel, divide: NDArray[np.int64] | None = None) 
         node_capacitance_pF=cell.node_capacitance_pF,
         lean=layout.lean_of_area,
         tilt_nS=2 * share * along * (layout.lean_of_length - layout.lean_of_area),
+        loads=tuple(loads),
     )
     steady = network.at(np.zeros(1))
     deviation = steady.voltages(drive, moment, node_drive)[:, 0].real

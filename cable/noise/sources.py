@@ -142,7 +142,7 @@ def _mean_parts(point: OperatingPoint, node: int) -> dict[str, Floats]:
     bare = replace(
         point.network,
         conductance_nS=cell.leak_nS,
-        node_conductance_nS=cell.node_leak_nS,
+        node_conductance_nS=cell.node_leak_nS + point.electrode_load_nS,
         tilt_nS=np.zeros_like(cell.leak_nS),
     ).at(np.zeros(1))
     z = bare.column(node).real

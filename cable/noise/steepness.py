@@ -18,6 +18,7 @@ from cable.noise.operating_point import OperatingPoint
 def falls_as(point: OperatingPoint) -> NDArray[np.float64]:
     """(E + 1,) the power p of S ~ ω^{-p} at each node; infinite where no source is at hand."""
     lumped = point.network.node_capacitance_pF > 0
+    lumped[[load.node for load in point.network.loads if load.resistance_GOhm == 0]] = True
     parent = point.network.parent[1:]
     power = np.full(len(lumped), np.inf)
     for source in point.sources:

@@ -101,7 +101,7 @@ def test_all_correlations(run, folder) -> None:
         (["pair", "soma", "half way", "--lag-ms", "-3"], "--lag-ms"),
         (["pair", "soma", "half way", "--all"], "takes no site"),
         (["map", "--out", "M.png", "--quantity", "correlation"], "needs --with SITE"),
-        (["map", "--out", "M.png", "--with", "soma"], "goes with --quantity correlation, lag or source"),
+        (["map", "--out", "M.png", "--with", "soma"], "goes with --quantity correlation, lag, source or charge-share"),
         (["along", "half way", "--quantity", "lag"], "command map"),
     ],
 )

@@ -18,7 +18,7 @@ def map_(
     input_: ShareInput = None,
     with_: Annotated[
         str | None,
-        typer.Option("--with", metavar="SITE", help="The site for the quantities correlation, lag and source."),
+        typer.Option("--with", metavar="SITE", help="The site of correlation, lag, source and charge-share."),
     ] = None,
     plane: Annotated[str | None, typer.Option(metavar="xy|xz|yz", help="The plane to draw; else the flattest.")] = None,
     tolerance: Tolerance = 1e-9,
@@ -45,7 +45,7 @@ def map_(
         chosen = [with_site(quantity, read.site(with_))]
     else:
         if with_ is not None:
-            raise DeskError("--with: goes with --quantity correlation, lag or source; take it out")
+            raise DeskError("--with: goes with --quantity correlation, lag, source or charge-share; take it out")
         chosen = [q for word in words for q in quantities(word, input_ or [], names)]
     target = output(out, FIGURE_ENDINGS, force, read.files)
     mention_findings(read)

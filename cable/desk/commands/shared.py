@@ -16,7 +16,8 @@ Quantity = Annotated[
     str | None,
     typer.Option(
         metavar="WORD",
-        help="mean, sd, variance, correlation-time, input-resistance, share; map: also correlation, lag, source.",
+        help="mean, sd, variance, correlation-time, input-resistance, share; "
+        "map: also correlation, lag, source, charge-share.",
     ),
 ]
 ShareInput = Annotated[

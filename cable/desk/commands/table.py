@@ -23,7 +23,7 @@ def table(
     """Mean, SD, correlation time and input resistance; without --out, the named sites on the terminal."""
     from cable.desk.files import output
     from cable.desk.scenario import read_scenario
-    from cable.desk.site_table import metadata, points_table, sites_table
+    from cable.desk.site_table import electrode_note, metadata, points_table, sites_table
     from cable.desk.tables import TABLE_ENDINGS, write_table
     from cable.desk.terminal import mention_findings, say_written
     from cable.desk.terminal_table import print_table
@@ -33,8 +33,8 @@ def table(
     mention_findings(read)
     field = read.model.fluctuations(tolerance=tolerance)
     if target is None:
-        notes = [*field.certificate.sentences(), *([field.upcrossing_note] if field.upcrossing_note else [])]
-        print_table(sites_table(field), list(field.variance_by_input_mV2), notes, read.title)
+        notes = [*field.certificate.sentences(), field.upcrossing_note, electrode_note(read.model)]
+        print_table(sites_table(field), list(field.variance_by_input_mV2), filter(None, notes), read.title)
         return
     write_table(sites_table(field) if sites else points_table(field), target, metadata(read, field))
     say_written(target.path)

@@ -11,6 +11,7 @@ from pydantic import Field, model_validator
 
 from cable.desk.messages import choices
 from cable.desk.schema.base import Kind, Name, Positive, Repair, Section
+from cable.desk.schema.electrodes import ElectrodeSection
 from cable.desk.schema.inputs import InputSection
 from cable.desk.schema.places import AtSection, ZoneSection
 from cable.theory.membrane import MEMBRANE_VALUES, Membrane, MembraneZone
@@ -90,4 +91,5 @@ class Document(Section):
     membrane: MembraneSection = Field(description="the section [membrane]")
     input: list[InputSection] = Field(default=[], description="sections [[input]]")
     site: list[SiteSection] = Field(default=[], description="sections [[site]]")
+    electrode: list[ElectrodeSection] = Field(default=[], description="sections [[electrode]]")
     threshold: Threshold | None = Field(default=None, description="the section [threshold]")
