@@ -11,6 +11,8 @@ from os import PathLike
 from cable.noise.certificate import Certificate
 from cable.noise.fluctuations import Fluctuations, SiteFluctuations
 from cable.noise.model import CableModel, ModelError
+from cable.theory.electrode import Electrode
+from cable.theory.filters import LowPass
 from cable.theory.kernel import Kernel
 from cable.theory.membrane import Membrane, MembraneZone
 from cable.theory.spiketrain import SpikeTrain
@@ -20,8 +22,10 @@ from cable.version import __version__
 __all__ = [
     "CableModel",
     "Certificate",
+    "Electrode",
     "Fluctuations",
     "Kernel",
+    "LowPass",
     "Membrane",
     "MembraneZone",
     "ModelError",

@@ -26,9 +26,9 @@ from cable.theory.filters import removed_by_trend
 Floats = NDArray[np.float64]
 HALF_TURNS, GAUSS, BLOCK = 48, 8, 8
 WIDEST, LONGEST = 1.0, 45.0  # panels in log ω beyond the half turns: width of one, length of all
-# share of the power that is removed, averaged over an oscillation, is a/x² + b/x⁴, its square c/x⁴; what the
-# oscillation adds beyond X is d·f/X³
-AVERAGE = {"mean": (0.5, 0.0, 0.375, -0.25), "line": (2.0, 1.5, 4.5, -1.0)}
+# the share of the power that is removed, averaged over an oscillation, is a/x², its square b/x⁴; what this leaves
+# of the integral beyond X is c·f/X³
+AVERAGE = {"mean": (0.5, 0.375, -0.25), "line": (2.0, 4.5, -0.5)}
 
 
 @dataclass(frozen=True, eq=False)
@@ -103,16 +103,16 @@ def _removed(
     x = (ends[:-1, None] + width * (at + 1) / 2).ravel()
     factor = (1 - removed_by_trend(x, trend)) ** degree[:, None] - 1
     total = (_values(function, per_x * x) * factor) @ (width / 2 * weight).ravel()
-    first, second, square, oscillation = AVERAGE[trend]
+    single, square, left = AVERAGE[trend]
     step = min(WIDEST, 2 * strip)
     for start in np.arange(0.0, LONGEST, step):
         x = edge * np.exp(start + step * (at + 1) / 2)
-        average = -degree[:, None] * (first / x**2 + second / x**4) + np.where(degree == 2, square, 0.0)[:, None] / x**4
+        average = -degree[:, None] * single / x**2 + np.where(degree == 2, square, 0.0)[:, None] / x**4
         part = (_values(function, per_x * x) * average * x) @ (weight * step / 2)
         total = total + part
         if np.all(np.abs(part) * per_x <= 1e-13 * size):
             break
-    rest = -degree * oscillation * function(np.array([per_x * edge]))[:, 0] / edge**3
+    rest = -degree * left * function(np.array([per_x * edge]))[:, 0] / edge**3
     return (total + rest) * per_x / np.pi, rest * per_x / np.pi
 
 

@@ -168,6 +168,24 @@ def test_the_table_is_of_the_clamped_cell() -> None:
     assert field.sd_mV[2] < free.sd_mV[2]
 
 
+def test_the_resistance_that_a_clamp_shows_is_the_cells_own() -> None:
+    """With synaptic conductance, a seal and a second leaky pipette at the very node of an ideal clamp."""
+    tree = arbor(5, 40)
+    sites, second = (Site("again", swc_id=int(tree.ids[0])),), Electrode(site="again", seal_GOhm=0.7)
+    held = model(tree, sites=sites, electrodes=(clamp(holding_mV=-70.0, seal_GOhm=0.5), second))
+    free = model(tree, sites=sites, electrodes=(Electrode(site="soma", seal_GOhm=0.5), second))
+    want = free.recording("soma").input_resistance_MOhm
+    assert held.recording("soma").input_resistance_MOhm == pytest.approx(want, rel=10 * REFINED)
+
+
+def test_current_falls_where_the_voltage_would_rise() -> None:
+    held = spread(CABLE, clamp(series_resistance_MOhm=50.0))
+    pair = held.recorded_pair("soma", "tip")
+    voltages = held.pair("soma", "tip", np.zeros(1), np.ones(1))
+    assert pair.recorded.value == pytest.approx(-voltages.correlation, rel=EXACT)
+    assert voltages.correlation > 0.1
+
+
 def test_two_clamps_each_record_their_own_current() -> None:
     """Both ends of a cable held: from either end, charge at the middle is halved, less what the membrane takes."""
     cell = spread(CABLE, clamp(holding_mV=-5.0), clamp("tip", holding_mV=4.0))

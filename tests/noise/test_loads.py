@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from dataclasses import replace
 
 import numpy as np
 import pytest
@@ -167,6 +168,30 @@ def test_thermal_noise_of_the_loaded_cell() -> None:
     z = cell.spectrum("soma", np.zeros(1)).input_impedance_MOhm[0].real
     assert z == pytest.approx(200.0, rel=1e-12)
     assert 4 * kT * z * 1e6 == pytest.approx(3.4256662988e-12, rel=1e-10, abs=0)
+
+
+def test_how_steeply_a_spectrum_falls_beside_a_pipette() -> None:
+    """A capacitance right at the end of a neurite is a lump there; behind a resistance it is not."""
+    f = np.geomspace(1e8, 1e9, 5)
+    for one, power in (
+        (Electrode(site="tip"), 3.5),
+        (Electrode(site="tip", pipette_capacitance_pF=20.0), 4.5),
+        (Electrode(site="tip", pipette_capacitance_pF=20.0, series_resistance_MOhm=10.0), 3.5),
+    ):
+        found = spread(BALL_AND_STICK, one).spectrum("tip", f)
+        assert found.falls_as == power
+        if one.series_resistance_MOhm == 0:
+            assert found.slope == pytest.approx(-power, abs=0.01)
+
+
+def test_means_by_source_are_those_of_the_loaded_cell() -> None:
+    tree = arbor(5, 40)
+    sites = (Site("d", swc_id=int(tree.ids[25])),)
+    held = Electrode(site="soma", mode="voltage clamp", holding_mV=-75.0, series_resistance_MOhm=30.0)
+    loaded = model(tree, sites=sites, electrodes=(held, Electrode(site="d", seal_GOhm=1.0)))
+    shift = loaded.recording("d").loaded.mean - replace(loaded, inputs=()).recording("d").loaded.mean
+    parts = loaded.sources("d").mean_by_input_mV
+    assert sum(float(part.sum()) for part in parts.values()) == pytest.approx(shift, rel=1e-5)
 
 
 CLAMP = {"mode": "voltage clamp", "holding_mV": -60.0}

@@ -5,6 +5,7 @@ from __future__ import annotations
 from typing import TYPE_CHECKING
 
 import numpy as np
+from matplotlib.axes import Axes
 from matplotlib.figure import Figure
 
 from cable.desk.figures.style import COLUMN_MM, GREY, INK, PALE, figure, plain_powers
@@ -36,7 +37,8 @@ def draw_record(study: RecordStudy, title: str = "") -> Figure:
     bottom = max(float(seen.min(initial=top)), top / RANGE) / 3
     upper.set_ylim(bottom, top * 4)
     upper.set_xlim(f[0], max(f[spectrum.true > bottom].max(initial=f[1]), f[1]))
-    upper.legend(frameon=False, loc="lower left")
+    # what a high-pass filter or windows take off leaves the lower left corner to the record
+    upper.legend(frameon=False, loc="lower left" if recording.electrode.keeps_mean else "lower center")
     upper.set_xlabel("frequency (Hz)")
     upper.set_ylabel(f"density ({unit}²/Hz)")
     _draw_error(study, lower)
@@ -55,7 +57,7 @@ def draw_record(study: RecordStudy, title: str = "") -> Figure:
     return page
 
 
-def _draw_error(study: RecordStudy, axes) -> None:  # type: ignore[no-untyped-def]
+def _draw_error(study: RecordStudy, axes: Axes) -> None:
     """Standard error of the SD against the length of the record, with the wanted one marked."""
     record, wanted = study.recording.recorded, study.wanted_error
     axes.set_xlabel("length of the record (s)")
@@ -66,7 +68,7 @@ def _draw_error(study: RecordStudy, axes) -> None:  # type: ignore[no-untyped-de
         return
     needed = record.seconds_for_sd(wanted)
     marks = [needed, record.shortest_s] + ([] if study.seconds is None else [study.seconds])
-    lengths = np.geomspace(min(marks) / 4, max(marks) * 30, 100)
+    lengths = np.geomspace(min(marks) / 10, max(marks) * 30, 100)
     error = np.array([100 * record.sd_relative_error(t) for t in lengths])
     good = lengths >= record.shortest_s
     axes.plot(lengths[good], error[good], color=INK, linewidth=1.4)
@@ -74,9 +76,11 @@ def _draw_error(study: RecordStudy, axes) -> None:  # type: ignore[no-untyped-de
     axes.set_xlim(lengths[0], lengths[-1])
     axes.set_ylim(error[-1], error[0])
     axes.text(0.02, 0.04, "pale: too short for this formula", transform=axes.transAxes, fontsize=6.5, color=GREY)
-    for (t, said), (shift, side) in zip(_marks(study, needed), (((5, 3), "left"), ((-5, -8), "right")), strict=False):
+    for k, (t, said) in enumerate(_marks(study, needed)):
         level = 100 * record.sd_relative_error(t)
+        near = k > 0 and needed / 5 < t < needed * 5
         axes.plot([t], [level], marker="o", color=INK, markersize=3.2)
+        shift, side = ((-5, -8), "right") if near else ((5, 3), "left")
         axes.annotate(said, (t, level), shift, textcoords="offset points", ha=side, fontsize=6.5)
 
 
