@@ -4,7 +4,7 @@ With ω = ω₀ sinh u the spectrum of a passive tree is analytic in |Im u| < π
 slowest relaxation rate, because all its poles lie on the imaginary ω axis beyond that rate. In a strip
 |Im u| < a the trapezoidal rule with step h errs by A·e^{-2πa/h} (Trefethen & Weideman 2014, SIAM Rev 56:385,
 theorem 5.1; from memory). The rules with h and 2h share nodes; their difference d measures A, and
-`SAFETY`·d·e^{-πa/h} certifies the finer rule.
+`SAFETY`·d·e^{-πa/h} certifies the finer rule. It is an estimate with a margin, not a proof.
 """
 
 from __future__ import annotations
@@ -22,6 +22,8 @@ Floats = NDArray[np.float64]
 
 SAFETY = 10.0
 USUAL = 100.0  # amplitude A for which the first step is chosen; seen: 4 for one pole, up to 60 on real cells
+CONTINUED = 1.5  # on the geometric continuation of the tail
+LEAST = 65.0  # amplitude that is assumed however well two rules agree; with it the report is near the tolerance
 PLAUSIBLE = 1e3  # an amplitude A beyond this says that the strip is narrower than thought
 BLOCK = 10  # frequencies handled at once
 MAX_HALVINGS = 6
@@ -56,9 +58,13 @@ def first_step(tolerance: float, strip: float) -> float:
 
 
 def _trapezoid_error(difference: float, step: float, strip: float) -> float:
-    """Bound on the error of the finer of two nested rules that differ by `difference`, relative."""
+    """Bound on the error of the finer of two nested rules that differ by `difference`, relative.
+
+    Two rules may agree by chance, when the terms of several poles cancel in their difference and not in the error;
+    so no amplitude below `LEAST` is believed.
+    """
     rate = math.exp(-math.pi * strip / step)
-    return SAFETY * difference * rate if difference <= PLAUSIBLE * rate else difference
+    return SAFETY * max(difference, LEAST * rate) * rate if difference <= PLAUSIBLE * rate else difference
 
 
 def integrate(
@@ -158,8 +164,11 @@ class _Rule:
 
 
 def _tail(before: Floats, last: Floats) -> Floats:
-    """What a geometric continuation of the last two summands adds beyond the range, at least as large as the last."""
+    """A bound on what the summands beyond the range add, from the ratio of the last two.
+
+    A mixture of powers falls ever more slowly than its last ratio says; `CONTINUED` allows for that.
+    """
     before, last = np.abs(before), np.abs(last)
     with np.errstate(divide="ignore", invalid="ignore"):
         ratio = np.clip(np.where(before > 0, last / before, 0.0), 0.0, 0.95)
-    return last * np.maximum(ratio / (1 - ratio), 0.5)
+    return CONTINUED * last * np.maximum(ratio / (1 - ratio), 0.5)

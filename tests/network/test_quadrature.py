@@ -52,3 +52,31 @@ def test_a_narrow_resonance_within_the_strip_that_is_stated() -> None:
     strip = abs(np.arcsinh((2 + 0.05j) / 0.5).imag)
     result = integrate(resonance, lambda v: v, 0.5, 1e-6, 20.0, strip)
     assert abs(float(result.value[0]) * 0.05 - 1) <= result.relative_error <= 1e-6
+
+
+def powers(rates: list[float], weights: list[float], order: int):
+    """A sum of poles of one order, whose integral is the sum of `weights`."""
+    area = {1: 0.5, 2: 0.25, 3: 0.1875}[order]
+    return lambda w: sum(a / (b * area) / (1 + (w / b) ** 2) ** order for a, b in zip(weights, rates, strict=True))[
+        None
+    ]
+
+
+def test_rules_that_agree_by_chance_are_not_believed() -> None:
+    """At this rate the rules with h and 2h differ by far less than either errs."""
+    result = integrate(powers([2.12], [1.0], 2), lambda v: v, 1.0, 1e-3, 6.0)
+    assert 1e-6 < abs(float(result.value[0]) - 1) <= result.relative_error <= 1e-3
+
+
+@pytest.mark.parametrize("order", [1, 2, 3])
+def test_random_mixtures_of_poles(order: int) -> None:
+    """The tolerance holds always; so does the report, but for triple poles beside ω₀, where it may be 3 times low."""
+    rng = np.random.default_rng(order)
+    for _ in range(300):
+        rates = 10 ** rng.uniform(0, 2.5, rng.integers(1, 4))
+        weights = 10 ** rng.uniform(-2, 0, len(rates))
+        tolerance = 10 ** rng.uniform(-9, -2)
+        result = integrate(powers(rates, weights, order), lambda v: v, 1.0, tolerance, 6.0)
+        error = abs(float(result.value[0]) / weights.sum() - 1)
+        assert error <= result.relative_error * (3 if order == 3 else 1) + 1e-14
+        assert error <= tolerance
