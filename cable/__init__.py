@@ -15,6 +15,7 @@ from cable.theory.electrode import Electrode
 from cable.theory.filters import LowPass
 from cable.theory.kernel import Kernel
 from cable.theory.membrane import Membrane, MembraneZone
+from cable.theory.sharing import Shared
 from cable.theory.spiketrain import SpikeTrain
 from cable.theory.synapse import Placed, SynapticInput
 from cable.version import __version__
@@ -30,6 +31,7 @@ __all__ = [
     "MembraneZone",
     "ModelError",
     "Placed",
+    "Shared",
     "SiteFluctuations",
     "SpikeTrain",
     "SynapticInput",

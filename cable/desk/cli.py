@@ -9,6 +9,7 @@ from typing import Annotated
 import typer
 
 from cable.desk.commands.along import along
+from cable.desk.commands.excursions import excursions
 from cable.desk.commands.inspect import inspect
 from cable.desk.commands.map import map_
 from cable.desk.commands.modes import modes
@@ -41,6 +42,7 @@ app.command("spectrum")(spectrum)
 app.command("pair")(pair)
 app.command("sources")(sources)
 app.command("modes")(modes)
+app.command("excursions")(excursions)
 app.command("point-neuron")(point_neuron)
 app.command("record")(record)
 

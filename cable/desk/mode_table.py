@@ -46,11 +46,11 @@ def mode_quantities(modes: Modes) -> list[ModeQuantity]:
 
 def mode_sentences(modes: Modes) -> list[str]:
     """How many voltages there are, in words."""
-    low, high = modes.participation
-    number = f"about {low:.2g}" if high < 1.1 * low else f"between {low:.2g} and {high:.2g}"
     shares = ", ".join(f"{100 * share:.1f}" for share in modes.share)
-    told = [
-        f"The participation number is {number}: so many independent voltages would spread the variance alike.",
-        f"The first {len(modes.share)} modes explain {100 * modes.share.sum():.1f} % of it (in per cent: {shares}).",
+    number, error = modes.participation, modes.participation_se
+    told = f"{number:.3g}" if error < 0.005 * number else f"{number:.3g} ± {error:.1g}"
+    first = "The first mode explains" if len(modes.share) == 1 else f"The first {len(modes.share)} modes explain"
+    return [
+        f"The participation number is {told}: so many independent voltages would spread the variance alike.",
+        f"{first} {100 * modes.share.sum():.1f} % of it (in per cent: {shares}).",
     ]
-    return told if high < 1.1 * low else [*told, "Ask for more modes with --count to bring the two bounds together."]

@@ -16,6 +16,7 @@ from pydantic import ValidationError
 from cable.desk.messages import choices, did_you_mean, quoted, shown
 from cable.desk.problems import Problem, ScenarioError, problems_of
 from cable.desk.schema import Document
+from cable.desk.synapse_list import read_lists
 from cable.noise.model import CableModel, ModelError
 from cable.theory.synapse import Placed
 from morphology import CellTree, Finding, PlaceError, Site, SwcError, Zone, kind_name
@@ -31,7 +32,8 @@ class Scenario:
         morphology_path: the SWC file it names.
         model: cell, membrane, inputs and sites.
         findings: what was odd about the reconstruction (no errors among them).
-        sha256: of the bytes of the TOML file followed by those of the SWC file.
+        sha256: of the bytes of the TOML file followed by those of the SWC file and of the lists of synapses.
+        list_paths: the lists of synapses it names.
     """
 
     path: Path
@@ -39,11 +41,12 @@ class Scenario:
     model: CableModel
     findings: tuple[Finding, ...]
     sha256: str
+    list_paths: tuple[Path, ...] = ()
 
     @property
     def files(self) -> tuple[Path, ...]:
         """The files that were read and must not be written."""
-        return self.path, self.morphology_path
+        return self.path, self.morphology_path, *self.list_paths
 
     @cached_property
     def title(self) -> str:
@@ -84,7 +87,9 @@ def read_scenario(path: str | PathLike[str]) -> Scenario:
     document = _checked(table, file)
     morphology_path = Path(path).parent / document.cell.morphology
     swc, tree, findings = _read_cell(document, morphology_path, file)
+    lists = read_lists(document, Path(path).parent, tree, file)
     sites, placed = _places(document, tree, file)
+    placed = tuple(listed.placed if listed else at for listed, at in zip(lists, placed, strict=True))
     try:
         model = CableModel(
             tree=tree,
@@ -97,8 +102,10 @@ def read_scenario(path: str | PathLike[str]) -> Scenario:
         )
     except ModelError as error:
         raise ScenarioError(file, [Problem(error.key, shown(error.message, 1000))]) from None
-    sha256 = hashlib.sha256(raw + swc).hexdigest()
-    return Scenario(Path(path), morphology_path, model, findings, sha256)
+    read = [listed for listed in lists if listed]
+    sha256 = hashlib.sha256(b"".join([raw, swc, *(listed.data for listed in read)])).hexdigest()
+    list_paths = tuple(listed.path for listed in read)
+    return Scenario(Path(path), morphology_path, model, findings, sha256, list_paths)
 
 
 def _bytes_of(path: str | PathLike[str]) -> bytes:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -13,6 +14,7 @@ from morphology import kind_name
 
 if TYPE_CHECKING:
     from cable.desk.scenario import Scenario
+    from cable.noise.correlation import CorrelationMap
     from cable.noise.fluctuations import Fluctuations
     from cable.noise.model import CableModel
 
@@ -35,6 +37,7 @@ def metadata(scenario: Scenario, field: Fluctuations) -> dict[str, Any]:
         **origin(scenario),
         "threshold_mV": scenario.model.threshold_mV,
         "upcrossing_note": field.upcrossing_note,
+        "variance_note": field.variance_note,
         "electrode_note": electrode_note(scenario.model),
         "certificate": field.certificate.as_dict(),
     }
@@ -128,6 +131,19 @@ def _site_row(field: Fluctuations, name: str) -> dict[str, Any]:
     if s.upcrossing_Hz is not None:
         row["upcrossing_Hz"] = float(s.upcrossing_Hz)
     return row
+
+
+def with_correlations(table: Table, maps: Sequence[CorrelationMap], sites_only: bool) -> Table:
+    """A table of all points (or of sites) with each map's correlation and lag as two more columns."""
+    columns = dict(table.columns)
+    for one in maps:
+        points = 0 if sites_only else len(one.correlation)
+        extra = [str(name) for name in columns["site"][points:]]
+        columns[f"correlation_with_{one.site}"] = np.r_[
+            one.correlation[:points], [one.correlation_at[name] for name in extra]
+        ]
+        columns[f"lag_behind_{one.site}_ms"] = np.r_[one.lag_ms[:points], [one.lag_at_ms[name] for name in extra]]
+    return Table(columns)
 
 
 def joined(table: Table, below: Table) -> Table:

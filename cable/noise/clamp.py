@@ -18,6 +18,7 @@ from numpy.typing import NDArray
 from cable.noise.cross import cross_spectra
 from cable.noise.integral import integrate_spectra
 from cable.noise.operating_point import OperatingPoint
+from cable.noise.population import couplings
 from cable.noise.steepness import falls_as
 from cable.theory.cylinder import mean_square_along
 from cable.theory.electrode import Electrode
@@ -88,37 +89,42 @@ def _mean_shares(point: OperatingPoint, node: int, clamp: Electrode) -> list[flo
 
 def _noise_shares(point: OperatingPoint, node: int, clamp: Electrode, tolerance: float) -> tuple[list[float], float]:
     """Variance of the current through the clamp over its variance with all synapses there, by input and in all."""
-    inputs = point.model.inputs
-    if not inputs:
+    count, parts = len(point.model.inputs), len(point.model.part_names)
+    if not count:
         return [], math.nan
-    strengths = [_strength_at_clamp(point, k, node) for k in range(len(inputs))]
 
     def spectra(omega: Floats) -> Floats:
         seen = cross_spectra(point, [node], 1j * omega)[:, 0, 0].real / clamp.resistance_GOhm**2
         own = point.network.columns_at(1j * omega, [node]).impedance_GOhm[0, node] / clamp.resistance_GOhm
-        colours = [source.colour(omega) * s for source, s in zip(point.sources, strengths, strict=True)]
-        return np.concatenate([seen, np.abs(own) ** 2 * np.array(colours)])
+        return np.concatenate([seen, np.abs(own) ** 2 * _currents_at_clamp(point, node, 1j * omega)])
 
     def scale(integrals: Floats) -> Floats:
-        return np.repeat([integrals[: len(inputs)].sum(), integrals[len(inputs) :].sum()], len(inputs))
+        return np.repeat([integrals[:parts].sum(), integrals[parts:].sum()], parts)
 
     found = integrate_spectra(point, spectra, scale, tolerance, falls_as(point)[[node]])
-    seen, local = found.value[: len(inputs)], found.value[len(inputs) :]
+    seen, local = found.value[:parts], found.value[parts:]
     with np.errstate(divide="ignore", invalid="ignore"):
-        shares = np.where(local > 0, seen / local, np.nan)
+        shares = np.where(local > 0, seen / local, np.nan)[:count]
     return shares.tolist(), float(seen.sum() / local.sum()) if local.sum() > 0 else math.nan
 
 
-def _strength_at_clamp(point: OperatingPoint, index: int, node: int) -> float:
-    """Spectrum over colour of the current of a population whose synapses all sit at `node`, pA²/ms."""
-    one, (on_pieces, at_nodes) = point.model.inputs[index], point.numbers[index]
-    number = on_pieces.sum() + at_nodes.sum()
-    if one.conductance_nS is not None and one.reversal_mV is not None:
-        amplitude = one.conductance_nS * (one.reversal_mV - point.reference_mV - point.deviation_mV[node])
-    else:
-        amplitude = one.current_pA or 0.0
-    pairs = (1 - one.correlation) * number + one.correlation * number**2
-    return float(one.rate_per_ms * amplitude**2 * pairs)
+def _currents_at_clamp(point: OperatingPoint, node: int, s_per_ms: NDArray[np.complexfloating]) -> Floats:
+    """(parts, F) spectra of the currents of populations whose synapses all sit at `node`, pA²·ms."""
+    spectra = np.zeros((len(point.model.part_names), len(s_per_ms)))
+    in_step = []
+    for k, (source, (on_pieces, at_nodes)) in enumerate(zip(point.sources, point.numbers, strict=True)):
+        one, number = source.population, on_pieces.sum() + at_nodes.sum()
+        amplitude = one.event_current_pA
+        if one.conductance_nS is not None and one.reversal_mV is not None:
+            amplitude = one.conductance_nS * (one.reversal_mV - point.reference_mV - point.deviation_mV[node])
+        together = math.sqrt(one.rate_per_ms) * amplitude * number
+        common = one.correlation * source.common(source, s_per_ms).real
+        spectra[k] = together**2 * (source.alone(s_per_ms).real / number + common)
+        in_step.append(together)
+    for i, j, correlation in couplings(point.sources):
+        common = point.sources[i].common(point.sources[j], s_per_ms).real
+        spectra[-1] += 2 * correlation * in_step[i] * in_step[j] * common
+    return spectra
 
 
 def _capacitance_seen_pF(point: OperatingPoint, reach: Floats) -> float:

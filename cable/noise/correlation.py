@@ -14,8 +14,8 @@ from numpy.typing import NDArray
 
 from cable.network.elimination import solve
 from cable.network.network import Response
-from cable.noise.integral import integrate_spectra, slowest_rate_per_ms
-from cable.noise.operating_point import Source, total_spectrum
+from cable.noise.integral import VARIANCE_FINITE_ABOVE, integrate_spectra, slowest_rate_per_ms
+from cable.noise.population import Source, couplings, total_spectrum
 from cable.noise.steepness import falls_as
 
 if TYPE_CHECKING:
@@ -32,15 +32,18 @@ class CorrelationMap:
 
     Attributes:
         site: its name.
-        correlation: (N,) correlation at lag 0; NaN where nothing fluctuates.
+        correlation: (N,) correlation at lag 0; NaN where nothing fluctuates or the variance is infinite.
         lag_ms: (N,) centroid of the cross-covariance over lag, the slow components' delay of the point behind
-            the site.
+            the site; NaN where nothing fluctuates.
+        correlation_at, lag_at_ms: the same at every named site, by name.
         relative_error: certified bound of the frequency integral.
     """
 
     site: str
     correlation: Floats
     lag_ms: Floats
+    correlation_at: dict[str, float]
+    lag_at_ms: dict[str, float]
     relative_error: float
 
 
@@ -60,42 +63,61 @@ def apply_spectra(sources: tuple[Source, ...], response: Response, vector: Float
     near, far = heard[parent], heard[1:]
     own, cross = response.noise_self, response.noise_cross
     current, in_step = np.zeros(heard.shape, dtype=np.complex128), np.zeros(heard.shape, dtype=np.complex128)
-    for source in sources:
-        correlation, colour = source.population.correlation, source.colour(omega)
-        strength = source.piece_strength[:, None] * ((1 - correlation) * colour)
+    s = 1j * omega
+    coupled = couplings(sources)
+    busy = {k for k, source in enumerate(sources) if source.population.correlation > 0}
+    in_steps = {k: sources[k].in_step(response) for k in busy.union(*(pair[:2] for pair in coupled))}
+    for i, source in enumerate(sources):
+        alone = source.alone(s).real
+        strength = source.piece_strength[:, None] * alone
         uneven = 3 * source.piece_lean[:, None]
         current += network.to_nodes(
             strength * (own * (1 - uneven) * near + cross * far), strength * (own * (1 + uneven) * far + cross * near)
         )
-        current += source.node_strength[:, None] * ((1 - correlation) * colour) * heard
-        if correlation > 0:
-            voltage = response.voltages(source.piece_amplitude, source.piece_moment, source.node_amplitude)
-            in_step += correlation * colour * voltage * (vector @ voltage.conj())
+        current += source.node_strength[:, None] * alone * heard
+        if source.population.correlation > 0:
+            here = in_steps[i]
+            in_step += source.population.correlation * source.common(source, s) * here * (vector @ here.conj())
+    for a, b, correlation in coupled:
+        for i, j in ((a, b), (b, a)):
+            in_step += correlation * sources[i].common(sources[j], s) * in_steps[i] * (vector @ in_steps[j].conj())
     return solve(response.factors, current) + in_step
 
 
 def correlation_map(model: CableModel, site: str, tolerance: float = 1e-6) -> CorrelationMap:
     """See `CableModel.correlation_map`."""
     point = model.refined.point
-    node, rows = model.node_of(site), point.layout.row_node
+    places = {name: model.node_of(name) for name in model.site_names}
+    node, points = model.node_of(site), len(model.tree)
+    rows = np.r_[point.layout.row_node, list(places.values())]
+    here = points + model.site_names.index(site)
+    power = falls_as(point)[rows]
+    infinite = power <= VARIANCE_FINITE_ABOVE
 
     def both(omega: Floats) -> Floats:
         response = point.network.at(omega)
         covariance = spectra_with(point.sources, response, node)[rows].real
-        return np.stack([covariance, total_spectrum(point.sources, response)[rows]], axis=1)
-
-    here = int(np.argmax(rows == node)) if (rows == node).any() else None
+        values = np.stack([covariance, total_spectrum(point.sources, response)[rows]], axis=1)
+        values[infinite] = 0.0
+        return values
 
     def scale(integrals: Floats) -> Floats:
         variance = integrals[:, 1]
-        at_site = variance[here] if here is not None else variance.min(where=variance > 0, initial=np.inf)
-        return np.stack([np.sqrt(variance * at_site), variance], axis=1)
+        return np.stack([np.sqrt(variance * variance[here]), variance], axis=1)
 
-    result = integrate_spectra(point, both, scale, tolerance, falls_as(point)[rows])
-    own = model.fluctuations(tolerance).at(site).variance_mV2
+    result = integrate_spectra(point, both, scale, tolerance, np.where(infinite, np.inf, power))
+    covariance, variance = np.where(infinite[:, None], np.nan, result.value).T
     slow = np.array([SLOW * slowest_rate_per_ms(point)])
-    with np.errstate(divide="ignore", invalid="ignore"):
-        correlation = result.value[:, 0] / np.sqrt(result.value[:, 1] * own)
     spectrum = spectra_with(point.sources, point.network.at(slow), node)[rows, 0]
-    lag = -np.angle(spectrum) / slow[0]
-    return CorrelationMap(site, correlation, lag, result.relative_error)
+    with np.errstate(divide="ignore", invalid="ignore"):
+        correlation = covariance / np.sqrt(variance * variance[here])
+        # not the angle, which jumps by π where places move against each other
+        lag = -spectrum.imag / spectrum.real / slow[0]
+    return CorrelationMap(
+        site=site,
+        correlation=correlation[:points],
+        lag_ms=lag[:points],
+        correlation_at=dict(zip(places, correlation[points:].tolist(), strict=True)),
+        lag_at_ms=dict(zip(places, lag[points:].tolist(), strict=True)),
+        relative_error=result.relative_error,
+    )

@@ -11,7 +11,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from cable.noise.certificate import Certificate
-from cable.noise.integral import DERIVATIVE_FINITE_ABOVE, integrate_spectra
+from cable.noise.integral import DERIVATIVE_FINITE_ABOVE, VARIANCE_FINITE_ABOVE, integrate_spectra
+from cable.noise.population import Source, shared_spectrum
 from cable.noise.steepness import falls_as
 from cable.theory.units import MOHM_PER_GOHM
 from morphology import kind_name
@@ -20,6 +21,10 @@ if TYPE_CHECKING:
     from cable.noise.model import CableModel
 
 Floats = NDArray[np.float64]
+VARIANCE_NOTE = (
+    "no SD where point synapses whose charge comes at once sit on a neurite: the variance is infinite there, as each "
+    "event begins with an infinite voltage; give them a kernel, or spread them over a zone"
+)
 
 
 @dataclass(frozen=True)
@@ -52,11 +57,13 @@ class Fluctuations:
         model: the model.
         certificate: how exact the numbers are.
         upcrossing_note: why upcrossing rates are undefined at some points ("" where none is).
+        variance_note: why the variance is infinite, and given as NaN, at some points ("" where it is not).
     """
 
     model: CableModel
     certificate: Certificate
     upcrossing_note: str
+    variance_note: str
     _mean: Floats
     _by_input: Floats
     _still: Floats
@@ -77,18 +84,21 @@ class Fluctuations:
 
     @property
     def variance_mV2(self) -> Floats:
-        """(N,) variance of the voltage, mV²."""
+        """(N,) variance of the voltage, mV²; NaN where it is infinite."""
         return self._points(self._variance)
 
     @property
     def sd_mV(self) -> Floats:
-        """(N,) standard deviation of the voltage, mV."""
+        """(N,) standard deviation of the voltage, mV; NaN where it is infinite."""
         return np.sqrt(self.variance_mV2)
 
     @property
     def variance_by_input_mV2(self) -> dict[str, Floats]:
-        """Per input, (N,) the part of the variance that it makes, mV²; the parts add up."""
-        return {one.name: self._points(self._by_input[:, k]) for k, one in enumerate(self.model.inputs)}
+        """Per input, (N,) the part of the variance that it makes, mV²; the parts add up.
+
+        Where inputs share spikes there is one more part, "shared": see `CableModel.part_names`.
+        """
+        return {name: self._points(self._by_input[:, k]) for k, name in enumerate(self.model.part_names)}
 
     @cached_property
     def _correlation_time(self) -> Floats:
@@ -161,7 +171,7 @@ class Fluctuations:
             mean_mV=float(self._mean[at]),
             sd_mV=math.sqrt(self._variance[at]),
             variance_mV2=float(self._variance[at]),
-            variance_by_input_mV2={one.name: float(self._by_input[at, k]) for k, one in enumerate(self.model.inputs)},
+            variance_by_input_mV2={name: float(self._by_input[at, k]) for k, name in enumerate(self.model.part_names)},
             correlation_time_ms=float(self._correlation_time[at]),
             input_resistance_MOhm=float(self._resistance[at]),
             upcrossing_Hz=None if self._upcrossing is None else float(self._upcrossing[at]),
@@ -175,15 +185,19 @@ def fluctuations(model: CableModel, tolerance: float = 1e-9) -> Fluctuations:
     layout = point.layout
     nodes = np.r_[layout.row_node, [layout.node_at(place) for place in model.site_places.values()]].astype(np.int64)
     power = falls_as(point)[nodes]
-    rough = (power <= DERIVATIVE_FINITE_ABOVE) & (power < np.inf)
+    infinite = power <= VARIANCE_FINITE_ABOVE
+    rough = power <= DERIVATIVE_FINITE_ABOVE
     wants_derivative = model.threshold_mV is not None
-    count = len(model.inputs)
+    count = len(model.part_names)
 
     def spectra(omega: Floats) -> Floats:
         response = point.network.at(omega)
         values = np.empty((len(nodes), count + wants_derivative, len(omega)))
         for k, source in enumerate(point.sources):
             values[:, k] = source.spectrum(response)[nodes]
+        if count > len(point.sources):
+            values[:, count - 1] = shared_spectrum(point.sources, response)[nodes]
+        values[infinite] = 0.0
         if wants_derivative:
             values[:, count] = np.where(rough[:, None], 0.0, omega**2 * values[:, :count].sum(axis=1))
         return values
@@ -195,8 +209,10 @@ def fluctuations(model: CableModel, tolerance: float = 1e-9) -> Fluctuations:
 
     resistance = point.steady.input_impedance_GOhm()[nodes, 0].real * MOHM_PER_GOHM
     if count:
-        result = integrate_spectra(point, spectra, scale, tolerance, power, wants_derivative)
-        by_input, error, used = result.value[:, :count], result.relative_error, len(result.omega_per_ms)
+        powers = np.where(infinite, np.inf, power)
+        result = integrate_spectra(point, spectra, scale, tolerance, powers, wants_derivative)
+        error, used = result.relative_error, len(result.omega_per_ms)
+        by_input = np.where(infinite[:, None], np.nan, result.value[:, :count])
         still = result.at_zero[:, :count].sum(axis=1)
         derivative = np.where(rough, np.nan, result.value[:, -1]) if wants_derivative else None
     else:
@@ -205,7 +221,8 @@ def fluctuations(model: CableModel, tolerance: float = 1e-9) -> Fluctuations:
     return Fluctuations(
         model=model,
         certificate=Certificate(tolerance, error, refined.relative_error, used, len(layout.row)),
-        upcrossing_note=_note(model, rough) if wants_derivative else "",
+        upcrossing_note=_upcrossing_note(point.sources, rough) if wants_derivative else "",
+        variance_note=VARIANCE_NOTE if infinite.any() else "",
         _mean=point.mean_mV[nodes],
         _by_input=by_input,
         _still=still,
@@ -214,10 +231,16 @@ def fluctuations(model: CableModel, tolerance: float = 1e-9) -> Fluctuations:
     )
 
 
-def _note(model: CableModel, rough: NDArray[np.bool_]) -> str:
+def _upcrossing_note(sources: tuple[Source, ...], rough: NDArray[np.bool_]) -> str:
     if not rough.any():
         return ""
+    at_once = any(source.population.kernel.is_impulse for source in sources)
+    cause = (
+        "synapses sit whose charge comes at once, or point synapses on a neurite"
+        if at_once
+        else "point synapses sit on a neurite"
+    )
     return (
-        "no upcrossing rate where point synapses sit on a neurite whose kernel jumps at t = 0: the voltage is "
+        f"no upcrossing rate where {cause} whose kernel jumps at t = 0: the voltage is "
         "too rough there for its derivative to have a variance"
     )

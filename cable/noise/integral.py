@@ -9,10 +9,11 @@ from collections.abc import Callable
 import numpy as np
 from numpy.typing import NDArray
 
-from cable.network.quadrature import Integral, integrate
+from cable.network.quadrature import Integral, NotConverged, integrate
 from cable.noise.operating_point import OperatingPoint
 
 Floats = NDArray[np.float64]
+VARIANCE_FINITE_ABOVE = 1.0  # the power of 1/ω above which ∫S dω is finite
 DERIVATIVE_FINITE_ABOVE = 3.0  # the power of 1/ω above which ∫ω²S dω is finite
 
 
@@ -43,30 +44,44 @@ def integrate_spectra(
     return integrate(spectra, scale, omega0, tolerance, reach, analytic_strip(point, omega0), crowded)
 
 
-def slowest_rate_per_ms(point: OperatingPoint) -> float:
-    """The slowest rate of the membrane, of all kernels and of all spike trains, 1/ms."""
-    inputs = point.model.inputs
-    kernels = [one.kernel.slowest_rate_per_ms for one in inputs]
-    trains = [abs(pole) for one in inputs for pole in one.spike_train.poles_per_ms(one.rate_Hz)]
-    return min([point.network.slowest_rate_per_ms, *kernels, *trains])
+def slowest_rate_per_ms(point: OperatingPoint, dead_times: bool = True) -> float:
+    """The slowest rate of the membrane, of all kernels and of all spike trains (dead times among them), 1/ms."""
+    kernels = [one.kernel.slowest_rate_per_ms for one in point.model.inputs]
+    return min([point.network.slowest_rate_per_ms, *kernels, *map(abs, _train_poles(point, dead_times))])
 
 
-def analytic_strip(point: OperatingPoint, omega0: float) -> float:
+def analytic_strip(point: OperatingPoint, omega0: float, dead_times: bool = True) -> float:
     """Half width of the strip in u = asinh(ω/ω₀) that no pole of the kernels or spike trains enters."""
-    poles = [
-        1j * pole / omega0
-        for one in point.model.inputs
-        for pole in (*one.kernel.poles_per_ms, *one.spike_train.poles_per_ms(one.rate_Hz))
-    ]
-    return min([math.pi / 2, *(abs(cmath.asinh(pole).imag) for pole in poles)])
+    poles = [p for one in point.model.inputs for p in one.kernel.poles_per_ms] + _train_poles(point, dead_times)
+    return min([math.pi / 2, *(abs(cmath.asinh(1j * p / omega0).imag) for p in poles)])
+
+
+def _train_poles(point: OperatingPoint, dead_times: bool) -> list[complex]:
+    inputs = [one for one in point.model.inputs if dead_times or one.spike_train.dead_time_ms == 0]
+    return [p for one in inputs for p in one.spike_train.poles_per_ms(one.rate_Hz)]
 
 
 def range_u(point: OperatingPoint, power: Floats, derivative: bool, tolerance: float) -> float:
-    """Where in u = asinh(ω/ω₀) the integrand has fallen to the tolerance, from its power at high frequency."""
-    corner = max([abs(p) for one in point.model.inputs for p in one.kernel.poles_per_ms])
+    """Where in u = asinh(ω/ω₀) the integrand has fallen to the tolerance, from its power at high frequency.
+
+    Raises:
+        NotConverged: a spectrum whose integral is infinite.
+    """
+    check_finite(power)
+    slowest = slowest_rate_per_ms(point)
+    corner = max([slowest, *(abs(p) for one in point.model.inputs for p in one.kernel.poles_per_ms)])
     finite = power[np.isfinite(power)]
     decay = float(finite.min(initial=6.0)) - 1.0
     if derivative:
         smooth = finite[finite > DERIVATIVE_FINITE_ABOVE]
         decay = min(decay, float(smooth.min(initial=6.0)) - 3.0)
-    return math.asinh(corner / slowest_rate_per_ms(point)) + math.log(1 / tolerance) / decay
+    return math.asinh(corner / slowest) + math.log(1 / tolerance) / decay
+
+
+def check_finite(power: Floats) -> None:
+    """Raise NotConverged where a spectrum falls so slowly, as this power of 1/ω, that the variance is infinite."""
+    if (power <= VARIANCE_FINITE_ABOVE).any():
+        raise NotConverged(
+            "the variance is infinite at a place asked for: point synapses whose charge comes at once sit there on a "
+            "neurite; give them a kernel, or spread them over a zone"
+        )

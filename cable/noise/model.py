@@ -13,12 +13,14 @@ from cable.network.layout import lay_out
 from cable.noise.refinement import Refined, refine
 from cable.theory.electrode import Electrode
 from cable.theory.membrane import Membrane
+from cable.theory.sharing import SHARED, SharingError, correlations
 from cable.theory.synapse import SynapticInput
 from morphology import CellTree, Place, PlaceError, Site, Zone, ZonePart
 
 if TYPE_CHECKING:
     from cable.noise.clamp import ClampShares
     from cable.noise.correlation import CorrelationMap
+    from cable.noise.excursions import Excursions
     from cable.noise.fluctuations import Fluctuations
     from cable.noise.modes import Modes
     from cable.noise.pairs import Pair
@@ -79,6 +81,11 @@ class CableModel:
                     extra = " (soma is always a site)" if key == "site" and name == "soma" else ""
                     raise ModelError(f"{key}[{place}].name", f"the name {name!r} is used twice{extra}; choose another")
         self.membrane_parts, self.input_parts, self.input_places, self.site_places  # noqa: B018 - checks them now
+        try:
+            correlations(self.inputs)
+        except SharingError as error:
+            entry = f"[{error.entry}]" if error.entry >= 0 else ""
+            raise ModelError(f"input[{error.index}].shares{entry}", error.message) from None
         self._check_electrodes()
 
     def _part(self, zone: Zone, key: str) -> ZonePart:
@@ -172,6 +179,16 @@ class CableModel:
         return float(held[0] if held else self.membrane.rest_mV)
 
     @property
+    def part_names(self) -> tuple[str, ...]:
+        """What a variance or spectrum is a sum of: the inputs and, where some share spikes, "shared".
+
+        The last is what the shared spikes add to the inputs by themselves; half of it belongs to either of the two
+        inputs of each pair. It is negative where excitation and inhibition share spikes.
+        """
+        sharing = any(one.fraction > 0 for population in self.inputs for one in population.shares)
+        return tuple(one.name for one in self.inputs) + (SHARED,) * sharing
+
+    @property
     def parts(self) -> list[ZonePart]:
         """All resolved zones, whose limits cut the cell."""
         return self.membrane_parts + [part for part in self.input_parts if part is not None]
@@ -209,16 +226,17 @@ class CableModel:
 
         return fluctuations(self, tolerance)
 
-    def spectrum(self, site: str, frequency_Hz: Floats, to: str | None = None) -> Spectrum:
+    def spectrum(self, site: str, frequency_Hz: Floats | None = None, to: str | None = None) -> Spectrum:
         """One-sided spectrum of the voltage at a site, in all and by input, and impedances, at frequencies (F,), Hz.
 
         Args:
             site: name of the site.
-            frequency_Hz: (F,) frequencies, at least 0.
+            frequency_Hz: (F,) frequencies, at least 0; unless given, 61 from 0.1 to 1000 Hz.
             to: another site, for the transfer impedance.
 
         Raises:
             KeyError: the model has no such site.
+            ValueError: a negative frequency.
         """
         from cable.noise.spectra import spectrum
 
@@ -267,7 +285,7 @@ class CableModel:
         """The leading modes of the voltage's covariance over the membrane.
 
         Raises:
-            ValueError: fewer than one mode, or as many as the network has nodes.
+            ValueError: fewer than one mode, more than the network has nodes, or nothing that fluctuates.
             NotConverged: the tolerance cannot be reached.
         """
         from cable.noise.modes import modes
@@ -319,12 +337,31 @@ class CableModel:
 
         return clamp_shares(self, site, tolerance)
 
+    def excursions(
+        self, sites: tuple[str, ...] | None = None, level_mV: float | None = None, tolerance: float = 1e-9
+    ) -> tuple[Excursions, ...]:
+        """Skewness and kurtosis of the voltage at sites (all of them unless named), and excursions beyond a level.
+
+        Args:
+            sites: names of the sites.
+            level_mV: the level, mV; None for the model's threshold, if it has one.
+            tolerance: relative error of the variances.
+
+        Raises:
+            KeyError: the model has no such site.
+            ValueError: a level that is no finite number.
+            NotConverged: the tolerance cannot be reached.
+        """
+        from cable.noise.excursions import excursions
+
+        return excursions(self, self.site_names if sites is None else tuple(sites), level_mV, tolerance)
+
     def point_neuron(self, site: str = "soma") -> PointNeuron:
         """The equivalent point neuron at a site.
 
         Raises:
             KeyError: the model has no such site.
-            NotConverged: the autocovariance cannot be certified, as with dead times.
+            NotConverged: the autocovariance cannot be certified.
         """
         from cable.noise.point_neuron import point_neuron
 

@@ -18,6 +18,7 @@ from cable.network.assembly import Passive, passive, synapse_numbers
 from cable.network.layout import Layout, lay_out
 from cable.network.loads import Load
 from cable.network.network import Network, Response
+from cable.noise.population import Source
 from cable.theory.cylinder import mean_square_along, spread_current
 from cable.theory.synapse import SynapticInput
 
@@ -26,61 +27,6 @@ if TYPE_CHECKING:
 
 Floats = NDArray[np.float64]
 LEAN_LIMIT = 0.28  # a noise covariance stays positive for centroids up to 1/√12; division brings them below
-
-
-@dataclass(frozen=True, eq=False)
-class Source:
-    """One population as a source of current noise around the operating point.
-
-    The spectrum of the current of a piece or node is its strength times `colour`. Where spike trains are
-    correlated, the correlated part drives all synapses in step with amplitudes of which strength is the square sum.
-
-    Attributes:
-        population: the synapses.
-        piece_strength, node_strength: (E,), (E + 1,) sums of rate·amplitude² over the synapses, pA²/ms.
-        piece_lean: (E,) centroid of that strength along the piece, from its middle.
-        piece_amplitude, node_amplitude: (E,), (E + 1,) sums of √rate·amplitude, pA/√ms.
-        piece_moment: (E,) first moment of the amplitude along the piece.
-    """
-
-    population: SynapticInput
-    piece_strength: Floats
-    piece_lean: Floats
-    node_strength: Floats
-    piece_amplitude: Floats
-    piece_moment: Floats
-    node_amplitude: Floats
-
-    def colour(self, omega_per_ms: Floats) -> Floats:
-        """(F,) |k̂(ω)|² times the spectrum of one spike train over its rate, ms²."""
-        one = self.population
-        return np.abs(one.kernel.transform(omega_per_ms)) ** 2 * one.spike_train.spectrum_over_rate(
-            omega_per_ms, one.rate_Hz
-        )
-
-    def spectrum(self, response: Response) -> Floats:
-        """(E + 1, F) two-sided spectrum of the voltage that this population makes at every node, mV²·ms."""
-        return total_spectrum((self,), response)
-
-
-def total_spectrum(sources: tuple[Source, ...], response: Response) -> Floats:
-    """(E + 1, F) two-sided voltage spectrum of independent populations together, in one sweep, mV²·ms."""
-    omega = response.omega_per_ms
-    pieces, nodes = len(response.network.resistance_GOhm), len(response.network.parent)
-    strength, moment, at_nodes = np.zeros((pieces, 1)), np.zeros((pieces, 1)), np.zeros((nodes, 1))
-    in_step = np.zeros((nodes, len(omega)))
-    for source in sources:
-        correlation, colour = source.population.correlation, source.colour(omega)
-        alone = source.piece_strength[:, None] * ((1 - correlation) * colour)
-        strength = strength + alone
-        moment = moment + alone * source.piece_lean[:, None]
-        at_nodes = at_nodes + source.node_strength[:, None] * ((1 - correlation) * colour)
-        if correlation > 0:
-            voltage = response.voltages(source.piece_amplitude, source.piece_moment, source.node_amplitude)
-            in_step += correlation * colour * np.abs(voltage) ** 2
-    if not strength.any() and not at_nodes.any():
-        return in_step
-    return response.spectra(strength, moment, at_nodes) + in_step
 
 
 @dataclass(frozen=True, eq=False)
@@ -129,12 +75,12 @@ class OperatingPoint:
     def _source(self, one: SynapticInput, on_pieces: Floats, at_nodes: Floats) -> Source:
         rate = one.rate_per_ms
         lean = self.layout.lean_of_area if one.by_area else self.layout.lean_of_length
-        if one.current_pA is not None:
-            mean = np.full(len(on_pieces), one.current_pA)
-            square, node_mean = mean**2, np.full(len(at_nodes), one.current_pA)
+        if one.conductance_nS is None:
+            mean = np.full(len(on_pieces), one.event_current_pA)
+            square, node_mean = mean**2, np.full(len(at_nodes), one.event_current_pA)
             moment, square_lean = mean * lean, lean
         else:
-            assert one.conductance_nS is not None and one.reversal_mV is not None
+            assert one.reversal_mV is not None
             peak, reversal = one.conductance_nS, one.reversal_mV - self.reference_mV
             near, far = (
                 reversal - self.deviation_mV[self.network.parent[1:]],

@@ -8,11 +8,12 @@ from typing import TYPE_CHECKING
 import numpy as np
 from numpy.typing import NDArray
 
-from cable.noise.pairs import covariances
+from cable.noise.covariance import covariances
 from cable.theory.units import MOHM_PER_GOHM
 
 if TYPE_CHECKING:
     from cable.noise.model import CableModel
+    from cable.noise.operating_point import OperatingPoint
 
 Floats = NDArray[np.float64]
 SMALL = 1e-5  # of the slowest rate: the step of the derivative of the impedance at zero frequency
@@ -31,9 +32,13 @@ class PointNeuron:
         time_constant_ms: effective membrane time constant, -d ln Z/ds at s = 0: the centroid delay of the voltage
             behind a brief local current (Agmon-Snir & Segev 1993, J Neurophysiol 70:2066; from memory).
         capacitance_pF: the capacitance with which that resistance has that time constant.
+        cell_time_constant_ms: all of the cell's capacitance over all of its conductance, synapses included: what the
+            membrane would have if the cell were isopotential.
         slow_ms, fast_ms, slow_weight: the autocovariance as variance · [w e^{-t/slow} + (1 - w) e^{-t/fast}];
             the weight may exceed 1, as it does for an RC cell with exponential events.
         fit_error: the largest difference between autocorrelation and fit.
+
+    What follows from the variance is NaN where that is infinite (see `Fluctuations.variance_note`) or 0.
     """
 
     site: str
@@ -43,6 +48,7 @@ class PointNeuron:
     input_resistance_MOhm: float
     time_constant_ms: float
     capacitance_pF: float
+    cell_time_constant_ms: float
     slow_ms: float
     fast_ms: float
     slow_weight: float
@@ -71,11 +77,18 @@ def point_neuron(model: CableModel, site: str) -> PointNeuron:
         input_resistance_MOhm=at.input_resistance_MOhm,
         time_constant_ms=time_constant,
         capacitance_pF=time_constant / (at.input_resistance_MOhm / MOHM_PER_GOHM),
+        cell_time_constant_ms=_whole_cell_ms(point),
         slow_ms=slow,
         fast_ms=fast,
         slow_weight=weight,
         fit_error=error,
     )
+
+
+def _whole_cell_ms(point: OperatingPoint) -> float:
+    network = point.network
+    capacitance = network.capacitance_pF.sum() + network.node_capacitance_pF.sum()
+    return float(capacitance / (network.conductance_nS.sum() + network.node_conductance_nS.sum()))
 
 
 def _two_exponentials(lag: Floats, rho: Floats) -> tuple[float, float, float, float]:

@@ -145,7 +145,7 @@ class Recording:
             for m in (self.bare, self.model)
         )
         gain = power_gain(self.electrode, OMEGA_PER_MS_PER_HZ * frequency)
-        parts = {one.name: gain * part for one, part in zip(self.model.inputs, loaded, strict=True)}
+        parts = {name: gain * part for name, part in zip(self.model.part_names, loaded, strict=True)}
         return RecordedSpectrum(frequency, true.sum(axis=0), loaded.sum(axis=0), gain * loaded.sum(axis=0), parts, gain)
 
 
@@ -193,7 +193,7 @@ def _record(point: OperatingPoint, node: int, electrode: Electrode, filtered: bo
     if electrode.clamps:
         mean = -float(point.deviation_mV[node]) / electrode.resistance_GOhm
     lost = filtered and not electrode.keeps_mean
-    names = [one.name for one in point.model.inputs]
+    names = point.model.part_names
     if not names:
         return Record(math.nan if lost else mean, {}, 0.0, 0.0, 0.0)
 

@@ -14,7 +14,8 @@ from typing import TYPE_CHECKING
 import numpy as np
 from numpy.typing import NDArray
 
-from cable.noise.operating_point import OperatingPoint, operating_point, total_spectrum
+from cable.noise.operating_point import OperatingPoint, operating_point
+from cable.noise.population import total_spectrum
 
 if TYPE_CHECKING:
     from cable.noise.model import CableModel

@@ -16,6 +16,7 @@ if TYPE_CHECKING:
     from cable.noise.model import CableModel
 
 Floats = NDArray[np.float64]
+LOWEST_HZ, HIGHEST_HZ, POINTS = 0.1, 1000.0, 61  # where nothing else is asked for
 
 
 @dataclass(frozen=True, eq=False)
@@ -25,7 +26,8 @@ class Spectrum:
     Attributes:
         site: its name.
         frequency_Hz: (F,) frequencies.
-        psd_by_input_mV2_per_Hz: per input, (F,) one-sided power spectral density; the parts add up.
+        psd_by_input_mV2_per_Hz: per input, and for shared spikes, (F,) one-sided power spectral density; the
+            parts add up.
         input_impedance_MOhm: (F,) complex input impedance.
         to: name of the site of the transfer impedance, or None.
         transfer_impedance_MOhm: (F,) complex transfer impedance between the two, or None.
@@ -56,9 +58,12 @@ class Spectrum:
         return float(np.polyfit(np.log(self.frequency_Hz[top]), np.log(self.psd_mV2_per_Hz[top]), 1)[0])
 
 
-def spectrum(model: CableModel, site: str, frequency_Hz: Floats, to: str | None = None) -> Spectrum:
+def spectrum(model: CableModel, site: str, frequency_Hz: Floats | None = None, to: str | None = None) -> Spectrum:
     """See `CableModel.spectrum`."""
-    frequency = np.asarray(frequency_Hz, dtype=float)
+    grid = np.geomspace(LOWEST_HZ, HIGHEST_HZ, POINTS) if frequency_Hz is None else frequency_Hz
+    frequency = np.asarray(grid, dtype=float)
+    if not (np.isfinite(frequency) & (frequency >= 0)).all():
+        raise ValueError("frequency_Hz: expected finite frequencies of at least 0")
     point = model.refined.point
     nodes = [model.node_of(site)] if to is None else [model.node_of(site), model.node_of(to)]
     psd = one_sided_per_Hz(by_frequency(point, nodes[:1], frequency)[:, 0, 0].real)
@@ -70,7 +75,7 @@ def spectrum(model: CableModel, site: str, frequency_Hz: Floats, to: str | None 
     return Spectrum(
         site=site,
         frequency_Hz=frequency,
-        psd_by_input_mV2_per_Hz={one.name: psd[k] for k, one in enumerate(model.inputs)},
+        psd_by_input_mV2_per_Hz=dict(zip(model.part_names, psd, strict=True)),
         input_impedance_MOhm=z[0],
         to=to,
         transfer_impedance_MOhm=None if to is None else z[1],

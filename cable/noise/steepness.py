@@ -4,6 +4,7 @@ At high frequency a place hears only its own neighbourhood. On a bare neurite |Z
 sources within a length constant, which shrinks as ω^{-1/2}, count; where a sphere sits, |Z_xx|² falls as
 1/ω². With a kernel falling as ω^{-n} the power of 1/ω is 2n plus: 1 for a point synapse on a neurite, 3/2 for
 synapses spread along it, 2 for those on a sphere, 5/2 for those spread on a neurite that leaves a sphere.
+n is 0 where the charge of an event comes at once.
 Places without a source at hand fall faster than any power.
 """
 

@@ -81,7 +81,8 @@ def kernel_from_text(text: str) -> Kernel:
     """
     import sympy
 
-    from cable.theory.kernel import Kernel, Term, peak_of
+    from cable.theory.kernel import Kernel, peak_of
+    from cable.theory.spelling import Term
 
     expression = parse_expression(text)
     t = sympy.Symbol("t", positive=True)

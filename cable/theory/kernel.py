@@ -2,7 +2,8 @@
 
 Every kernel is a finite sum of terms c·tⁿ·e^{-pt} with Re p > 0, so its transform is a ratio of polynomials in
 s = iω and nothing about it is sampled. The transform is kept as one fraction, N(s)/Π(1 + s/p): summed term
-by term it would lose its leading digits at high frequency, where the terms cancel.
+by term it would lose its leading digits at high frequency, where the terms cancel. The impulse, an event whose
+whole charge arrives at once, has no term and no pole: its area is 1, and so is its transform.
 """
 
 from __future__ import annotations
@@ -17,35 +18,32 @@ import numpy as np
 from numpy.typing import NDArray
 
 from cable.theory.membrane import check_positive
+from cable.theory.spelling import LATEX, PLAIN, Term, spelled
 
 if TYPE_CHECKING:
     import sympy
 
 
 @dataclass(frozen=True)
-class Term:
-    """One term c·tⁿ·e^{-pt} of a kernel, t in ms; complex p come in conjugate pairs."""
-
-    factor: complex
-    power: int
-    rate_per_ms: complex
-
-
-@dataclass(frozen=True)
 class Kernel:
-    """Time course of one event, scaled to a peak of 1.
+    """Time course of one event, scaled to a peak of 1; for the impulse, to an area of 1.
 
     Attributes:
         terms: the sum that it is.
         numerator: coefficients of N(s), constant first.
         poles_per_ms: the p of Π(1 + s/p), repeated by multiplicity.
-        text: the kernel as a formula in t (ms).
+        formula: the kernel as a formula in t (ms), with all digits.
     """
 
     terms: tuple[Term, ...]
     numerator: tuple[float, ...]
     poles_per_ms: tuple[complex, ...]
-    text: str
+    formula: str
+
+    @classmethod
+    def impulse(cls) -> Kernel:
+        """An event that is over at once. Its area is 1, so that the size of an event is its charge."""
+        return cls((), (1.0,), (), "DiracDelta(t)")
 
     @classmethod
     def exponential(cls, decay_ms: float) -> Kernel:
@@ -107,8 +105,10 @@ class Kernel:
         return kernel_from_text(text)
 
     def value(self, t_ms: NDArray[np.float64] | float) -> NDArray[np.float64]:
-        """The kernel at times t_ms (...), 0 before t = 0."""
+        """The kernel at times t_ms (...), 0 before t = 0; an impulse is infinite at t = 0."""
         t = np.asarray(t_ms, dtype=float)
+        if self.is_impulse:
+            return np.where(t == 0, np.inf, 0.0)
         after = np.maximum(t, 0.0)
         total = sum((term.factor * after**term.power * np.exp(-term.rate_per_ms * after)).real for term in self.terms)
         return np.where(t >= 0, total, 0.0)
@@ -126,38 +126,50 @@ class Kernel:
         return value
 
     @property
+    def is_impulse(self) -> bool:
+        """Whether the event is over at once."""
+        return not self.poles_per_ms
+
+    @property
     def area_ms(self) -> float:
-        """∫k dt, ms."""
+        """∫k dt, ms; for the impulse 1, without unit."""
         return float(self.numerator[0])
 
     @property
     def falls_as(self) -> int:
-        """The n with k̂ ~ ω^{-n} at high frequency: 1 for a kernel that jumps at t = 0, 2 for one with a corner."""
+        """The n with k̂ ~ ω^{-n} at high frequency: 0 for an impulse, 1 for a jump at t = 0, 2 for a corner there."""
         return len(self.poles_per_ms) - (len(self.numerator) - 1)
 
     @property
     def slowest_rate_per_ms(self) -> float:
-        """The slowest rate at which the kernel decays, 1/ms."""
-        return min(complex(p).real for p in self.poles_per_ms)
+        """The slowest rate at which the kernel decays, 1/ms; infinite for an impulse."""
+        return min((complex(p).real for p in self.poles_per_ms), default=math.inf)
 
     @cached_property
     def peak_ms(self) -> float:
         """The time of the peak, ms."""
-        return peak_of(self.value, self.poles_per_ms)[0]
+        return 0.0 if self.is_impulse else peak_of(self.value, self.poles_per_ms)[0]
+
+    @cached_property
+    def text(self) -> str:
+        """The kernel as arithmetic in t (ms), its numbers to 4 significant digits."""
+        return spelled(self.terms, PLAIN)
 
     @cached_property
     def latex(self) -> str:
-        """The kernel as LaTeX."""
-        import sympy
-
-        return str(sympy.latex(self.symbolic))
+        """The kernel as LaTeX, its numbers to 4 significant digits."""
+        return spelled(self.terms, LATEX)
 
     @property
     def symbolic(self) -> sympy.Expr:
-        """The kernel as a sympy expression in t (ms)."""
+        """The kernel as a sympy expression in t (ms), with all digits."""
         from cable.theory.expression import parse_expression
 
-        return parse_expression(self.text)
+        if self.is_impulse:
+            import sympy
+
+            return sympy.DiracDelta(sympy.Symbol("t", real=True))
+        return parse_expression(self.formula)
 
 
 def peak_of(value: Callable[..., NDArray[np.float64]], poles_per_ms: tuple[complex, ...]) -> tuple[float, float]:

@@ -99,26 +99,36 @@ class SpikeTrain:
         return 1 / (1 + 2 * step * np.sinc(2 * half / np.pi) + step**2 * np.sinc(half / np.pi) ** 2)
 
     def spectrum_over_rate_at(self, s_per_ms: NDArray[np.complex128], rate_Hz: float) -> NDArray[np.complex128]:
-        """The same continued to complex s = iω (...), 1/ms: (1 - φ(s)φ(-s))/((1 - φ(s))(1 - φ(-s)))."""
+        """The same continued to complex s = iω (...), 1/ms: (1 - φ(s)φ(-s))/((1 - φ(s))(1 - φ(-s))).
+
+        Each of the three differences is computed as one, so that nothing cancels at low frequency.
+        """
         s = np.asarray(s_per_ms, dtype=complex)
         rate = rate_Hz * PER_MS_PER_HZ
         if self.process == "poisson" or rate == 0:
             return np.ones_like(s)
         small = np.abs(s) < 1e-9 * rate
-        t = np.where(small, rate, s)
-        value = 1 + sum(phi / (1 - phi) for phi in (self._interval(t, rate), self._interval(-t, rate)))
-        return np.where(small, self.spectrum_over_rate(np.zeros(s.shape), rate_Hz), value)
-
-    def _interval(self, s: NDArray[np.complex128], rate: float) -> NDArray[np.complex128]:
-        """Laplace transform φ(s) of the density of one interval."""
+        t = np.where(small, rate + 0j, s)
         if self.process == "gamma":
-            return (1 + s / (self.order * rate)) ** -self.order
-        hazard = rate / (1 - rate * self.dead_time_ms)
-        return hazard * np.exp(-s * self.dead_time_ms) / (hazard + s)
+            order = complex(self.order)
+            x = t / (order * rate)
+            ahead, back = _log1p(x), _log1p(-x)
+            both = np.where(np.abs(x) < 0.5, _log1p(-x * x), ahead + back)
+            value = -np.expm1(-order * both) / np.expm1(-order * ahead) / np.expm1(-order * back)
+        else:
+            hazard, dead = rate / (1 - rate * self.dead_time_ms), self.dead_time_ms
+            value = t / (t - hazard * np.expm1(-t * dead)) * (t / (t + hazard * np.expm1(t * dead)))
+        return np.where(small, self.spectrum_over_rate(np.zeros(s.shape), rate_Hz), value)
 
     def _gamma(self, omega: NDArray[np.float64], rate: float) -> NDArray[np.float64]:
         x = omega / (self.order * rate)
-        log_p = -self.order * np.log1p(1j * x)
+        log_p = -self.order * _log1p(1j * x)
         with np.errstate(divide="ignore", invalid="ignore"):
             value = -np.expm1(2 * log_p.real) / np.abs(np.expm1(log_p)) ** 2
         return np.where(x < 1e-7, 1 / self.order, value)
+
+
+def _log1p(z: NDArray[np.complexfloating]) -> NDArray[np.complex128]:
+    """ln(1 + z) whose real part keeps its digits for small z, which numpy's does not for complex numbers."""
+    with np.errstate(divide="ignore"):
+        return 0.5 * np.log1p(2 * z.real + z.real**2 + z.imag**2) + 1j * np.angle(1 + z)

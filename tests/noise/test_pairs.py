@@ -11,7 +11,6 @@ from numpy.testing import assert_allclose
 from scipy.integrate import quad
 
 from cable import CableModel, Kernel, Membrane, SpikeTrain, SynapticInput
-from cable.network.quadrature import NotConverged
 from morphology import CellTree, Site, Zone
 from noise.cells import EXCITATION, INHIBITION, arbor, model
 from oracles import worked, worked_distal
@@ -185,10 +184,3 @@ def test_gamma_trains_and_ringing_kernels_keep_the_certificate() -> None:
         assert cell.pair("soma", "soma", np.zeros(1), NO_HZ).covariance_mV2[0] == pytest.approx(
             cell.fluctuations().at("soma").variance_mV2, rel=EXACT
         )
-
-
-def test_dead_times_are_refused_with_a_way_out() -> None:
-    one = replace(EVEN, spike_train=SpikeTrain.dead_time(5.0))
-    cell = CableModel(CellTree.from_text(STICK), PLAIN, (one,))
-    with pytest.raises(NotConverged, match="use a gamma process"):
-        cell.pair("soma", "soma", np.zeros(1), NO_HZ)

@@ -2,17 +2,19 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import numpy as np
 import pytest
 from numpy.testing import assert_allclose
 from scipy.integrate import quad
 
-from cable import CableModel, Kernel, Membrane, SynapticInput
+from cable import CableModel, Kernel, Membrane, SpikeTrain, SynapticInput
 from morphology import CellTree, Site, Zone
-from noise.cells import arbor, model
+from noise.cells import EXCITATION, arbor, model
 from oracles import worked
 from oracles.shot_noise import psd_one_sided_mV2_per_Hz
-from tolerances import EXACT, TYPED
+from tolerances import ALGEBRA, EXACT, IDENTITY, ROUND_OFF, TYPED
 
 PLAIN = Membrane(axial_resistivity_ohm_cm=150, capacitance_uF_cm2=1, resistance_ohm_cm2=20000, rest_mV=0)
 CABLE = "1 3 0 0 0 1 -1\n2 3 1000 0 0 1 1\n"
@@ -42,10 +44,63 @@ def test_worked_spectra() -> None:
     one = SynapticInput(
         name="a", rate_Hz=1, kernel=Kernel.exponential(2.0), where=Zone(), density_per_um2=0.08, current_pA=10
     )
-    cell = CableModel(CellTree.from_text("1 1 0 0 0 10 -1\n2 3 10 0 0 1 1\n3 3 1010 0 0 1 2\n"), PLAIN, (one,))
+    tree = CellTree.from_text("1 1 0 0 0 10 -1\n2 3 10 0 0 1 1\n3 3 1010 0 0 1 2\n")
+    cell = CableModel(tree, PLAIN, (one,), (Site("tip", swc_id=3),))
     want = worked.ball_and_stick()
-    got = cell.spectrum("soma", np.array([0.0, 1.0, 10.0, 100.0])).psd_mV2_per_Hz
-    assert_allclose(got, [float(want[f"psd_soma_{f}Hz_mV2_per_Hz"]) for f in (0, 1, 10, 100)], rtol=EXACT)
+    frequency = np.array([0.0, 1.0, 10.0, 100.0])
+    soma, tip = (cell.spectrum(site, frequency).psd_mV2_per_Hz for site in ("soma", "tip"))
+    assert_allclose(soma, [float(want[f"psd_soma_{f}Hz_mV2_per_Hz"]) for f in (0, 1, 10, 100)], rtol=EXACT)
+    # the cross-spectrum from what a person sees of it; it is real, and has changed its sign by 100 Hz
+    pair = cell.pair("soma", "tip", np.zeros(1), frequency)
+    shared = np.sqrt(pair.coherence * soma * tip) * np.cos(pair.phase_rad)
+    typed = [float(want[f"psd_soma_tip_{f}Hz_mV2_per_Hz"]) for f in (1, 10, 100)]
+    assert_allclose(shared[1:], typed, rtol=IDENTITY)
+    assert typed[2] < 0
+
+
+def test_spectra_of_separate_inputs_add() -> None:
+    tree = arbor(21, 40)
+    halves = [
+        replace(EXCITATION, name=kind, where=Zone(kinds=(kind,)), conductance_nS=None, reversal_mV=None, current_pA=3.0)
+        for kind in ("basal", "apical")
+    ]
+    frequency = np.array([0.0, 3.0, 40.0, 900.0])
+    both = model(tree, *halves).spectrum("soma", frequency)
+    for half in halves:
+        alone = model(tree, half).spectrum("soma", frequency)
+        assert_allclose(both.psd_by_input_mV2_per_Hz[half.name], alone.psd_mV2_per_Hz, rtol=ALGEBRA)
+    assert_allclose(sum(both.psd_by_input_mV2_per_Hz.values()), both.psd_mV2_per_Hz, rtol=ROUND_OFF)
+
+
+def test_frequencies_unless_given_and_where_wrong() -> None:
+    cell = CableModel(CellTree.from_text(CABLE), PLAIN)
+    assert_allclose(cell.spectrum("soma").frequency_Hz, np.geomspace(0.1, 1000, 61))
+    with pytest.raises(ValueError, match="at least 0"):
+        cell.spectrum("soma", np.array([1.0, -1.0]))
+    with pytest.raises(KeyError, match="the sites are soma"):
+        cell.spectrum("tip")
+
+
+@pytest.mark.parametrize("train", [SpikeTrain.gamma(6), SpikeTrain.dead_time(4.0)])
+def test_regular_trains_keep_their_digits_at_low_frequency(train: SpikeTrain) -> None:
+    """A regular train has little power at low frequency; what is left, rate·CV², is a small difference."""
+    rate_Hz = 240.0
+    one = SynapticInput(
+        name="a",
+        rate_Hz=rate_Hz,
+        kernel=Kernel.exponential(2.0),
+        where=Zone(),
+        density_per_um=1,
+        current_pA=1,
+        spike_train=train,
+    )
+    tree = CellTree.from_text(CABLE)
+    poisson = replace(one, spike_train=SpikeTrain.poisson())
+    frequency = np.array([0.0, 1e-6, 1e-4, 1e-2])
+    regular, plain = (CableModel(tree, PLAIN, (i,)).spectrum("soma", frequency).psd_mV2_per_Hz for i in (one, poisson))
+    square = 1 / 6 if train.process == "gamma" else (1 - 4e-3 * rate_Hz) ** 2
+    assert_allclose(regular[:3] / plain[:3], square, rtol=EXACT)
+    assert regular[3] / plain[3] == pytest.approx(square, rel=1e-5)
 
 
 def test_sphere_is_filtered_shot_noise() -> None:

@@ -4,6 +4,8 @@ Nothing here imports `cable` or `morphology`. One idea a file:
 
     plain             a cell as a list of cylinders and spheres; inputs as filtered Poisson events
     dense             nodal matrices by naive loops; one cylinder by 40-digit quadrature
+    dense_sources     what each cylinder contributes to each voltage, by dense matrices
+    cut_cells         a whole cell with zones, tapers and driving forces by dense matrices
     compartments      finite volumes and a Lyapunov equation
     finite_elements   impedance by a general finite-element library, tapering pieces included
     cone              a tapering piece by modified Bessel functions

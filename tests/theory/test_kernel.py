@@ -10,7 +10,7 @@ import pytest
 from scipy.integrate import quad
 
 from cable import Kernel
-from tolerances import TYPED
+from tolerances import EXACT, TYPED
 
 KERNELS = {
     "exponential": Kernel.exponential(2.0),
@@ -73,7 +73,7 @@ def test_published_peaks_and_areas() -> None:
 )
 def test_expression_is_the_built_in_kernel(text: str, same: Kernel) -> None:
     omega = np.array([0.0, 0.2, 3.0, 50.0])
-    np.testing.assert_allclose(Kernel.expression(text).transform(omega), same.transform(omega), rtol=1e-9)
+    np.testing.assert_allclose(Kernel.expression(text).transform(omega), same.transform(omega), rtol=EXACT)
 
 
 HOSTILE = [

@@ -2,12 +2,13 @@
 
 from __future__ import annotations
 
+import mpmath as mp
 import numpy as np
 import pytest
 
 from cable import SpikeTrain
 from cable.theory.units import OMEGA_PER_MS_PER_HZ
-from tolerances import ROUND_OFF
+from tolerances import ALGEBRA, ROUND_OFF
 
 FREQUENCIES_HZ = [1.0, 5.0, 10.0, 20.0, 50.0, 200.0]
 # r (1 - |p|²)/|1 - p|² at r = 20/s; Bartlett 1963, Cox & Lewis 1966 (from memory), derived, verified by simulation
@@ -34,7 +35,7 @@ TABLE = {
 def test_published_table(name: str) -> None:
     train, at_zero, values = TABLE[name]
     omega = OMEGA_PER_MS_PER_HZ * np.array(FREQUENCIES_HZ)
-    np.testing.assert_allclose(20 * train.spectrum_over_rate(omega, 20.0), values, rtol=1e-10)
+    np.testing.assert_allclose(20 * train.spectrum_over_rate(omega, 20.0), values, rtol=ALGEBRA)
     assert 20 * float(train.spectrum_over_rate(np.zeros(1), 20.0)[0]) == pytest.approx(at_zero, rel=ROUND_OFF)
 
 
@@ -53,6 +54,28 @@ def test_poles_make_the_interval_transform_one(train: SpikeTrain, rate: float) -
             hazard = rate * 1e-3 / (1 - rate * 1e-3 * train.dead_time_ms)
             value = hazard * np.exp(-s * train.dead_time_ms) / (hazard + s)
         assert value == pytest.approx(1.0, abs=1e-9)
+
+
+@pytest.mark.parametrize("train", [SpikeTrain.gamma(2.5), SpikeTrain.gamma(20), SpikeTrain.dead_time(4.0)])
+@pytest.mark.parametrize("turn", [0.0, 0.4])
+def test_no_digit_is_lost_at_any_frequency(train: SpikeTrain, turn: float) -> None:
+    """Against 60 digits: at low frequency the formula is a difference of nearly equal numbers."""
+    rate_Hz, rate = 240.0, mp.mpf(240) / 1000
+
+    def interval(s):
+        if train.process == "gamma":
+            return (1 + s / (mp.mpf(train.order) * rate)) ** -mp.mpf(train.order)
+        hazard = rate / (1 - rate * train.dead_time_ms)
+        return hazard * mp.exp(-s * train.dead_time_ms) / (hazard + s)
+
+    for omega in (1e-7, 1e-4, 1e-2, 0.3, 5.0):
+        with mp.workdps(60):
+            s = mp.mpc(complex(1j * omega * np.exp(1j * turn)))
+            want = complex((1 - interval(s) * interval(-s)) / ((1 - interval(s)) * (1 - interval(-s))))
+        assert train.spectrum_over_rate_at(np.array([complex(s)]), rate_Hz)[0] == pytest.approx(want, rel=ROUND_OFF)
+        if turn == 0:
+            found = train.spectrum_over_rate(np.array([omega]), rate_Hz)[0]
+            assert found == pytest.approx(want.real, rel=ROUND_OFF)
 
 
 def test_messages() -> None:

@@ -36,7 +36,7 @@ def along(
 
     read = read_scenario(scenario)
     way = way_to_site(read.model, read.site(site))
-    names = [i.name for i in read.model.inputs]
+    names = list(read.model.part_names)
     chosen = quantities(quantity or ("share" if input_ else "sd"), input_ or [], names)[0]
     endings = (*TABLE_ENDINGS, ".png", ".svg", ".pdf")
     target = output(out, endings, force, read.files) if out is not None else None
@@ -44,7 +44,8 @@ def along(
     field = read.model.fluctuations(tolerance=tolerance)
     table = way_table(field, way)
     if target is None:
-        print_table(thinned(table, ROWS_ON_TERMINAL), names, field.certificate.sentences(), read.title)
+        notes = filter(None, [*field.certificate.sentences(), field.variance_note])
+        print_table(thinned(table, ROWS_ON_TERMINAL), names, notes, read.title)
         return
     if target.ending in TABLE_ENDINGS:
         write_table(table, target, {**metadata(read, field), "along": site})

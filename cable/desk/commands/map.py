@@ -35,7 +35,7 @@ def map_(
     if plane not in (None, "xy", "xz", "yz"):
         raise DeskError(f"--plane: found {quoted(plane)}, expected xy, xz or yz; leave it out for the flattest")
     read = read_scenario(scenario)
-    names = [i.name for i in read.model.inputs]
+    names = list(read.model.part_names)
     words = [quantity] if quantity else ["share"] if input_ else ["mean", "sd"]
     if quantity in WITH_SITE and not input_:
         if with_ is None:

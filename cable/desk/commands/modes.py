@@ -17,7 +17,8 @@ def modes(
     scenario: ScenarioArgument,
     count: Annotated[int, typer.Option(min=1, help="How many modes.")] = 10,
     out: Annotated[
-        str | None, typer.Option(metavar="M.csv|.json|.npz|.png|.svg|.pdf", help="A table or a figure.")
+        str | None,
+        typer.Option(metavar="M.csv|.json|.npz|.png|.svg|.pdf", help="A table, or a figure of the first four."),
     ] = None,
     force: Force = False,
 ) -> None:
@@ -36,13 +37,15 @@ def modes(
     try:
         found = read.model.modes(count)
     except ValueError as error:
-        raise DeskError(f"--{error}") from None
+        option = "--" if str(error).startswith("count: ") else ""
+        raise DeskError(f"{option}{error}") from None
     if target is None:
         for sentence in mode_sentences(found):
             console().print(sentence, markup=False)
         return
     if target.ending in TABLE_ENDINGS:
         about = {**origin(read), "share": found.share, "participation": found.participation}
+        about["participation_se"] = found.participation_se
         certificate = {"quadrature_relative_error": found.relative_error}
         write_table(mode_table(read.model.tree, found), target, {**about, "certificate": certificate})
     else:

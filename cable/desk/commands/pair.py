@@ -38,12 +38,13 @@ def pair(
     known = choices(read.model.site_names, "and")
     if all_ and site is not None:
         raise DeskError("--all: takes no site; leave the sites out, or --all")
+    if all_ and lag_ms is not None:
+        raise DeskError("--lag-ms: goes with two sites; --all gives correlations at lag 0; take one of them out")
     if not all_ and (site is None or other is None):
         raise DeskError(f"pair: needs two sites, or --all; the sites are {known}")
     if lag_ms is not None and not 0 < lag_ms < 1e6:
         raise DeskError(f"--lag-ms: found {lag_ms:g}, expected more than 0 and less than 1e6")
-    endings = TABLE_ENDINGS if all_ else (*TABLE_ENDINGS, ".png", ".svg", ".pdf")
-    target = output(out, endings, force, read.files) if out is not None else None
+    target = output(out, (*TABLE_ENDINGS, ".png", ".svg", ".pdf"), force, read.files) if out is not None else None
     mention_findings(read)
     if all_:
         matrix = read.model.correlation_matrix(tolerance)
@@ -52,9 +53,16 @@ def pair(
             from cable.desk.terminal_table import print_matrix
 
             print_matrix(read.model.site_names, matrix.tolist(), read.title)
-        else:
+            return
+        if target.ending in TABLE_ENDINGS:
             write_table(table, target, origin(read))
-            say_written(target.path)
+        else:
+            from cable.desk.figures.matrix import draw_matrix
+            from cable.desk.figures.style import save, styled
+
+            with styled():
+                save(draw_matrix(read.model.site_names, matrix, read.title), target, read.title)
+        say_written(target.path)
         return
     found = study_pair(read.model, read.site(site or ""), read.site(other or ""), lag_ms, tolerance)
     if target is None:

@@ -34,13 +34,17 @@ def point_neuron(
         write_table(Table({key: [value] for key, value in found.as_dict().items()}), target, origin(read))
         say_written(target.path)
         return
-    told = (
+    told = [
         f"{shown(name, 60)}: {found.mean_mV:.2f} ± {found.sd_mV:.3g} mV, correlation time "
         f"{found.correlation_time_ms:.3g} ms.",
         f"Membrane: {found.input_resistance_MOhm:.4g} MΩ, {found.capacitance_pF:.4g} pF, time constant "
-        f"{found.time_constant_ms:.3g} ms.",
+        f"{found.time_constant_ms:.3g} ms; capacitance over conductance of the whole cell "
+        f"{found.cell_time_constant_ms:.3g} ms.",
         f"Autocovariance: {found.slow_weight:.3g} of exp(-t/{found.slow_ms:.3g} ms) and {1 - found.slow_weight:.3g} of "
         f"exp(-t/{found.fast_ms:.3g} ms); the fit errs by at most {found.fit_error:.1g} of the variance.",
-    )
+    ]
+    if not found.sd_mV > 0:
+        reason = "nothing fluctuates" if found.sd_mV == 0 else read.model.fluctuations().variance_note
+        told = [f"{shown(name, 60)}: {found.mean_mV:.2f} mV; no autocovariance: {reason}.", told[1]]
     for sentence in told:
         console().print(sentence, markup=False)

@@ -24,7 +24,7 @@ def sources(
     from cable.desk.files import output
     from cable.desk.scenario import read_scenario
     from cable.desk.site_table import origin
-    from cable.desk.source_table import source_sentences, source_table
+    from cable.desk.source_table import source_sentences, source_summary, source_table
     from cable.desk.tables import TABLE_ENDINGS, write_table
     from cable.desk.terminal import console, mention_findings, say_written
 
@@ -38,9 +38,7 @@ def sources(
             console().print(sentence, markup=False)
         return
     if target.ending in TABLE_ENDINGS:
-        certificate = {"quadrature_relative_error": found.relative_error}
-        about = {**origin(read), "site": name, "half_within_um": found.half_within_um(), "certificate": certificate}
-        write_table(source_table(found), target, about)
+        write_table(source_table(found), target, {**origin(read), **source_summary(found)})
     else:
         from cable.desk.figures.sources import draw_sources
         from cable.desk.figures.style import save, styled

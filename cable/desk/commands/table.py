@@ -17,24 +17,34 @@ def table(
         str | None, typer.Option(metavar="T.csv|.json|.npz", help="Every point of the cell, into this file.")
     ] = None,
     sites: Annotated[bool, typer.Option("--sites", help="The named sites only.")] = False,
+    with_: Annotated[
+        list[str] | None,
+        typer.Option("--with", metavar="SITE", help="Add correlation with this site, and lag behind it; repeatable."),
+    ] = None,
     tolerance: Tolerance = 1e-9,
     force: Force = False,
 ) -> None:
     """Mean, SD, correlation time and input resistance; without --out, the named sites on the terminal."""
     from cable.desk.files import output
+    from cable.desk.messages import DeskError
     from cable.desk.scenario import read_scenario
-    from cable.desk.site_table import electrode_note, metadata, points_table, sites_table
+    from cable.desk.site_table import electrode_note, metadata, points_table, sites_table, with_correlations
     from cable.desk.tables import TABLE_ENDINGS, write_table
     from cable.desk.terminal import mention_findings, say_written
     from cable.desk.terminal_table import print_table
 
     read = read_scenario(scenario)
+    partners = [read.site(name) for name in dict.fromkeys(with_ or [])]
+    if partners and out is None:
+        raise DeskError("--with: goes with --out; the correlations of the named sites are given by pair --all")
     target = output(out, TABLE_ENDINGS, force, read.files) if out is not None else None
     mention_findings(read)
     field = read.model.fluctuations(tolerance=tolerance)
     if target is None:
-        notes = [*field.certificate.sentences(), field.upcrossing_note, electrode_note(read.model)]
+        notes = [*field.certificate.sentences(), field.variance_note, field.upcrossing_note, electrode_note(read.model)]
         print_table(sites_table(field), list(field.variance_by_input_mV2), filter(None, notes), read.title)
         return
-    write_table(sites_table(field) if sites else points_table(field), target, metadata(read, field))
+    whole = sites_table(field) if sites else points_table(field)
+    shared = [read.model.correlation_map(name, tolerance) for name in partners]
+    write_table(with_correlations(whole, shared, sites), target, metadata(read, field))
     say_written(target.path)

@@ -29,7 +29,7 @@ def draw_pair(pair: Pair, title: str = "") -> Figure:
         line = DASHES[(k + 1) % len(DASHES)]
         upper.plot(pair.lag_ms, part, color=GREY, linewidth=0.9, linestyle=line, label=shown(name, 22))
     upper.set_xlim(pair.lag_ms[0], pair.lag_ms[-1])
-    upper.legend(frameon=False, loc="upper right", handlelength=2.6)
+    upper.legend(frameon=False, loc="best", handlelength=2.0, borderaxespad=0.1)
     a, b = (shown(name, 26) for name in pair.sites)
     upper.set_xlabel(f"lag of {b} behind {a} (ms)")
     upper.set_ylabel("covariance (mV²)")

@@ -30,11 +30,6 @@ def draw_spectrum(spectrum: Spectrum, title: str = "") -> Figure:
     bottom = max(float(spectrum.psd_mV2_per_Hz.min(initial=top)), top / RANGE)
     upper.set_ylim(bottom / 3, top * 2)
     upper.legend(frameon=False, loc="lower left")
-    if np.isfinite(spectrum.slope):
-        at = f[-1] / 10**0.55
-        level = float(np.exp(np.interp(np.log(at), np.log(f), np.log(np.maximum(spectrum.psd_mV2_per_Hz, bottom)))))
-        text = f"slope {spectrum.slope:.2f}".replace("-", "−")
-        upper.annotate(text, (at, level), (5, 5), textcoords="offset points", fontsize=6.5)
     lower.loglog(f, np.abs(spectrum.input_impedance_MOhm), color=INK, linewidth=1.3, label="input")
     if spectrum.transfer_impedance_MOhm is not None:
         label = f"transfer to {shown(spectrum.to or '', 24)}"
@@ -48,5 +43,8 @@ def draw_spectrum(spectrum: Spectrum, title: str = "") -> Figure:
     for axes in (upper, lower):
         axes.yaxis.set_label_coords(-0.16, 0.5)
     page.text(0.02, 0.985, shown(title, 52), va="top", fontsize=8, weight="bold")
-    page.text(0.02, 0.94, f"at {shown(spectrum.site, 60)}", va="top", fontsize=6.5, color=GREY)
+    text = f"at {shown(spectrum.site, 26)}"
+    if np.isfinite(spectrum.slope):
+        text += f"; slope {spectrum.slope:.2f} over the top decade".replace("-", "−")
+    page.text(0.02, 0.94, text, va="top", fontsize=6.5, color=GREY)
     return page

@@ -10,8 +10,9 @@ from cable.desk.messages import choices
 from cable.desk.schema.base import Name, NotNegative, Positive, Section, spoken
 from cable.desk.schema.places import PlacedSection, ZoneSection
 from cable.theory.kernel import Kernel
+from cable.theory.sharing import Shared
 from cable.theory.spiketrain import SpikeTrain
-from cable.theory.synapse import Placed, SynapticInput
+from cable.theory.synapse import EVENTS, Placed, SynapticInput
 from morphology import Zone
 
 
@@ -56,7 +57,7 @@ class SpikeTrainSection(Section):
     process: Annotated[Literal["poisson", "gamma", "dead time"], BeforeValidator(spoken)] | None = Field(
         default=None, description="the process"
     )
-    order: Positive | None = Field(default=None, description="order of the gamma process")
+    order: Annotated[float, Field(ge=1)] | None = Field(default=None, description="order of the gamma process")
     dead_time_ms: Positive | None = Field(default=None, description="dead time after a spike, ms")
 
     @model_validator(mode="after")
@@ -85,6 +86,17 @@ class SpikeTrainSection(Section):
         return SpikeTrain.poisson()
 
 
+class SharedSection(Section):
+    """One entry of `shares`."""
+
+    input: Name = Field(description="the name of another input")
+    fraction: float = Field(ge=0, le=1, description="fraction of the spikes that are the same")
+
+    def shared(self) -> Shared:
+        """The entry of `cable`."""
+        return Shared(self.input, self.fraction)
+
+
 class InputSection(Section):
     """[[input]]"""
 
@@ -95,48 +107,70 @@ class InputSection(Section):
     count: Positive | None = Field(default=None, description="synapses in the whole zone")
     spread: Literal["length", "area"] = Field(default="length", description="how count is spread")
     at: list[PlacedSection] | None = Field(default=None, min_length=1, description="places such as [{ swc_id = 7 }]")
+    synapses: str | None = Field(
+        default=None, min_length=1, max_length=1000, description="a CSV file with a column swc_id, beside the scenario"
+    )
     rate_Hz: NotNegative = Field(description="rate of one synapse, Hz")
-    conductance_nS: NotNegative | None = Field(default=None, description="peak conductance of one event, nS")
+    conductance_nS: Positive | None = Field(default=None, description="peak conductance of one event, nS")
     reversal_mV: float | None = Field(default=None, description="reversal potential, mV")
     current_pA: float | None = Field(default=None, description="peak current of one event, pA")
-    kernel: KernelSection = Field(description="such as { rise_ms = 0.2, decay_ms = 2.0 }")
+    charge_fC: float | None = Field(default=None, description="charge of one event, fC")
+    size_cv: NotNegative = Field(default=0.0, description="coefficient of variation of the size of an event")
+    kernel: KernelSection | None = Field(default=None, description="such as { rise_ms = 0.2, decay_ms = 2.0 }")
     correlation: float = Field(default=0.0, ge=0, le=1, description="pairwise correlation within the population")
+    shares: list[SharedSection] = Field(
+        default=[], description='spikes in common with other inputs, such as [{ input = "GABA", fraction = 0.1 }]'
+    )
     spike_train: SpikeTrainSection = Field(default=SpikeTrainSection(), description="the process of the spikes")
 
     @model_validator(mode="after")
     def _says_where_and_what(self) -> Self:
         densities = [k for k in ("density_per_um", "density_per_um2", "count") if getattr(self, k) is not None]
-        if self.at is not None and (self.where is not None or densities):
+        listed = [k for k in ("at", "synapses") if getattr(self, k) is not None]
+        if len(listed) == 2:
+            raise ValueError("found at and synapses, expected one of them; keep one")
+        if listed and (self.where is not None or densities):
             extra = (["where"] if self.where is not None else []) + densities
-            raise ValueError(f"found at and {choices(extra, 'and')}, expected either at, or where with a density")
-        if self.at is None and len(densities) != 1:
+            raise ValueError(
+                f"found {listed[0]} and {choices(extra, 'and')}, expected either {listed[0]}, or where with a density"
+            )
+        if not listed and len(densities) != 1:
             found = choices(densities, "and") if densities else "no density"
             raise ValueError(
                 f"found {found}, expected one of density_per_um, density_per_um2 and count (with where), "
-                "or at; " + ("keep one" if densities else "add one")
+                "or at, or synapses; " + ("keep one" if densities else "add one")
             )
         if "spread" in self.model_fields_set and self.count is None:
             raise ValueError("found spread without count, expected both; a density says by itself how it counts")
-        if (self.conductance_nS is None) == (self.current_pA is None):
-            found = "neither" if self.current_pA is None else "both"
-            remedy = "add one" if self.current_pA is None else "keep one"
-            raise ValueError(f"found {found} of conductance_nS and current_pA, expected one of them; {remedy}")
+        given = [k for k in EVENTS if getattr(self, k) is not None]
+        if len(given) != 1:
+            found = ("neither", "one", "both", "all")[len(given)]
+            told = choices(given, "and") if len(given) > 1 else choices(EVENTS)
+            remedy = "keep one" if given else "add one"
+            raise ValueError(f"found {found} of {told}, expected one of {choices(EVENTS)}; {remedy}")
         if (self.conductance_nS is None) != (self.reversal_mV is None):
             have, lack = (
                 ("conductance_nS", "reversal_mV") if self.reversal_mV is None else ("reversal_mV", "conductance_nS")
             )
-            remedy = f"add {lack}" if self.current_pA is None else f"take {have} out: a current has none"
+            remedy = f"add {lack}" if have == "conductance_nS" else f"take {have} out: {given[0]} has none"
             raise ValueError(f"found {have} without {lack}, expected both; {remedy}")
+        if self.kernel is None and self.charge_fC is None:
+            raise ValueError(
+                f"found {given[0]} without kernel, expected the time course of an event; add kernel, or give "
+                "charge_fC, whose charge comes at once where there is no kernel"
+            )
+        if self.kernel is not None and self.charge_fC is not None and not abs(self.kernel.kernel().area_ms) > 1e-12:
+            raise ValueError("found charge_fC with a kernel of area 0, which carries no charge; give current_pA")
+        self.spike_train.spike_train().check_rate(self.rate_Hz)
         return self
 
     def synaptic_input(self, places: tuple[Placed, ...]) -> SynapticInput:
         """The input of `cable`, with its places resolved to sites."""
-        same = ("name", "density_per_um", "density_per_um2", "count", "spread", "rate_Hz", "conductance_nS")
-        values: dict[str, Any] = {
-            key: getattr(self, key) for key in (*same, "reversal_mV", "current_pA", "correlation")
-        }
-        if self.at is None:
+        same = ("name", "density_per_um", "density_per_um2", "count", "spread", "rate_Hz", *EVENTS, "reversal_mV")
+        values: dict[str, Any] = {key: getattr(self, key) for key in (*same, "size_cv", "correlation")}
+        if self.at is None and self.synapses is None:
             values["where"] = self.where.zone() if self.where is not None else Zone()
-        return SynapticInput(
-            **values, at=places, kernel=self.kernel.kernel(), spike_train=self.spike_train.spike_train()
-        )
+        if self.kernel is not None:
+            values["kernel"] = self.kernel.kernel()
+        shares = tuple(one.shared() for one in self.shares)
+        return SynapticInput(**values, at=places, shares=shares, spike_train=self.spike_train.spike_train())

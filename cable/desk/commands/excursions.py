@@ -1,0 +1,62 @@
+"""`cablenoise excursions`: how skewed the voltage is at sites, and how often it goes beyond a level."""
+
+from __future__ import annotations
+
+from typing import Annotated
+
+import typer
+
+from cable.desk.commands.shared import Force, ScenarioArgument, Tolerance
+from cable.desk.terminal import command
+
+
+@command
+def excursions(
+    scenario: ScenarioArgument,
+    sites: Annotated[
+        list[str] | None,
+        typer.Argument(metavar="SITE", help="Sites of the scenario; all of them if none is named."),
+    ] = None,
+    level: Annotated[
+        float | None, typer.Option("--level-mV", metavar="X", help="The level; the scenario's threshold if not given.")
+    ] = None,
+    share: Annotated[
+        float, typer.Option(min=1e-9, max=0.5, help="Share of the time for which a level is to be told.")
+    ] = 0.01,
+    out: Annotated[str | None, typer.Option(metavar="E.csv|.json|.npz", help="A table, one row a site.")] = None,
+    tolerance: Tolerance = 1e-9,
+    force: Force = False,
+) -> None:
+    """Skewness and kurtosis, crossings of a level, time above it, and the level exceeded for a share of the time."""
+    import math
+
+    from cable.desk.excursion_table import excursion_about, excursion_sentences, excursion_table
+    from cable.desk.files import output
+    from cable.desk.messages import DeskError, shown
+    from cable.desk.scenario import read_scenario
+    from cable.desk.site_table import origin
+    from cable.desk.tables import TABLE_ENDINGS, write_table
+    from cable.desk.terminal import console, mention_findings, say_written
+
+    read = read_scenario(scenario)
+    names = tuple(dict.fromkeys(read.site(name) for name in sites)) if sites else read.model.site_names
+    if level is not None and not math.isfinite(level):
+        raise DeskError(f"--level-mV: found {level:g}, expected a finite number of mV; correct it")
+    if not math.isfinite(share):
+        raise DeskError(f"--share: found {share:g}, expected a number above 0 and up to 0.5; correct it")
+    target = output(out, TABLE_ENDINGS, force, read.files) if out is not None else None
+    mention_findings(read)
+    found = read.model.excursions(names, level, tolerance)
+    if target is not None:
+        write_table(excursion_table(found, share), target, {**origin(read), **excursion_about(found)})
+        say_written(target.path)
+        return
+    for one in found:
+        for sentence in excursion_sentences(one, share):
+            console().print(shown(sentence, 1000), markup=False)
+    errors = [one.cumulant_relative_error for one in found if not math.isnan(one.cumulant_relative_error)]
+    if errors:
+        console().print(f"Skewness and kurtosis are exact to about {max(errors):.0e} of them.", markup=False)
+    if found[0].level_mV is None:
+        told = "No level was given: ask with --level-mV X, or put [threshold] level_mV into the scenario."
+        console().print(told, markup=False)
