@@ -25,9 +25,17 @@ def test_arrows_run_one_way(folder: str) -> None:
     for file in files:
         for node in ast.walk(ast.parse(file.read_text(encoding="utf-8"))):
             names = [a.name for a in node.names] if isinstance(node, ast.Import) else []
-            names += [node.module] if isinstance(node, ast.ImportFrom) and node.module else []
+            if isinstance(node, ast.ImportFrom):
+                assert node.level == 0, f"{file}: a relative import hides where its arrow points"
+                names += [f"{node.module}.{a.name}" for a in node.names]
             for name in names:
                 assert not any(name == up or name.startswith(f"{up}.") for up in ABOVE[folder]), f"{file}: {name}"
+
+
+def test_geometry_knows_no_electricity() -> None:
+    code = "import sys, morphology; print([m for m in sys.modules if m.split('.')[0] == 'cable'])"
+    run = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=True, cwd=ROOT)
+    assert run.stdout.strip() == "[]"
 
 
 @pytest.mark.parametrize("package", ["cable", "morphology"])

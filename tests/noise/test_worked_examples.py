@@ -121,14 +121,20 @@ def test_cable_driven_on_its_distal_half(tmp_path: Path) -> None:
     assert float(rows["middle"]["sd_mV"]) == pytest.approx(float(want["sd_500_mV"]), rel=EXACT)
 
 
-def test_ball_and_stick(tmp_path: Path) -> None:
+SOMA_AND_STICK = "1 1 0 0 0 10 -1\n2 3 10 0 0 1 1\n"
+
+
+@pytest.mark.parametrize("rows_of_stick", ["3 3 1010 0 0 1 2\n", "3 3 510 0 0 1 2\n4 3 1010 0 0 1 3\n"])
+def test_ball_and_stick(tmp_path: Path, rows_of_stick: str) -> None:
+    """The middle is a site within the stick's one cylinder, or a row of its own; crossings are those of the mean."""
     want = worked.ball_and_stick()
-    swc = "1 1 0 0 0 10 -1\n2 3 10 0 0 1 1\n3 3 510 0 0 1 2\n4 3 1010 0 0 1 3\n"
     scenario = population("where = {}\ndensity_per_um2 = 0.08\nrate_Hz = 1.0\ncurrent_pA = 10.0")
-    rows = table(tmp_path, swc, scenario + "[threshold]\nlevel_mV = 3.2\n")
-    for row, place in (("1", "soma"), ("3", "mid"), ("4", "tip")):
+    scenario += '[[site]]\nname = "mid"\nat = { path_um = 510 }\n[threshold]\nlevel_mV = 3.2\n'
+    rows = table(tmp_path, SOMA_AND_STICK + rows_of_stick, scenario)
+    tip = str(2 + rows_of_stick.count("\n"))
+    for row, place in (("1", "soma"), ("mid", "mid"), (tip, "tip")):
         check(rows[row], want["mean_mV"], want[f"sd_{place}_mV"])
-    for row, place in (("1", "soma"), ("4", "tip")):
+    for row, place in (("1", "soma"), (tip, "tip")):
         assert float(rows[row]["upcrossing_Hz"]) == pytest.approx(float(want[f"upcrossing_{place}_Hz"]), rel=EXACT)
     assert float(rows["1"]["input_resistance_MOhm"]) == pytest.approx(
         float(want["input_resistance_soma_MOhm"]), rel=EXACT
@@ -138,13 +144,12 @@ def test_ball_and_stick(tmp_path: Path) -> None:
 def test_ball_and_stick_with_common_input(tmp_path: Path) -> None:
     """The coherent part is the same at every place of a uniform tree; it makes most of the variance."""
     want = worked.ball_and_stick()
-    swc = "1 1 0 0 0 10 -1\n2 3 10 0 0 1 1\n3 3 1010 0 0 1 2\n"
     scenario = population("where = {}\ndensity_per_um2 = 0.08\nrate_Hz = 1.0\ncurrent_pA = 10.0\ncorrelation = 0.1")
-    rows = table(tmp_path, swc, scenario)
+    rows = table(tmp_path, SOMA_AND_STICK + "3 3 1010 0 0 1 2\n", scenario)
     assert float(rows["1"]["sd_mV"]) == pytest.approx(float(want["sd_soma_correlated_mV"]), rel=EXACT)
     for row, place in (("1", "soma"), ("3", "tip")):
         coherent = (float(rows[row]["variance_mV2"]) - 0.9 * float(want[f"sd_{place}_mV"]) ** 2) / 0.1
-        assert coherent == pytest.approx(float(want["coherent_variance_mV2"]), rel=1e-8)
+        assert coherent == pytest.approx(float(want["coherent_variance_mV2"]), rel=EXACT)
 
 
 def test_y_branch_by_the_three_halves_law(tmp_path: Path) -> None:

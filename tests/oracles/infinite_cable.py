@@ -10,6 +10,7 @@ import math
 from dataclasses import dataclass
 
 import numpy as np
+from scipy.integrate import quad
 from scipy.special import erfc, k0
 
 
@@ -92,6 +93,31 @@ def distributed_covariance_mV2(
         return scale * math.exp(-X)
     r = tau_s_ms / cable.tau_m_ms
     return scale * (math.exp(-X) - math.sqrt(r / (1 + r)) * math.exp(-X * math.sqrt((1 + r) / r)))
+
+
+def distributed_lagged_covariance_mV2(
+    cable: Cable,
+    density_per_um: float,
+    rate_per_ms: float,
+    charge_fC: float,
+    tau_s_ms: float,
+    distance_um: float,
+    lag_ms: float,
+) -> float:
+    """The same at a lag: an integral over wave numbers k, each mode decaying at the rate 1 + k²."""
+    X, T = distance_um / cable.lambda_um, abs(lag_ms) / cable.tau_m_ms
+    b = cable.tau_m_ms / tau_s_ms
+
+    def mode(k: float) -> float:
+        """(b²/2) [e^(-aT)/a - e^(-bT)/b] / (b² - a²), a = 1 + k², written so that a = b is no exception."""
+        a = 1 + k * k
+        gap = abs(b - a)
+        between = -math.expm1(-gap * T) / gap if gap else T
+        return b / (2 * (a + b)) * (math.exp(-a * T) / a + math.exp(-min(a, b) * T) * between)
+
+    options = {"epsabs": 1e-13, "limit": 400}
+    total = quad(mode, 0, math.inf, weight="cos", wvar=X, **options) if X else quad(mode, 0, math.inf, **options)
+    return 4 / math.pi * total[0] * distributed_covariance_mV2(cable, density_per_um, rate_per_ms, charge_fC, 0.0)
 
 
 def point_variance_at_site_mV2(cable: Cable, rate_per_ms: float, charge_fC: float, tau_s_ms: float) -> float:

@@ -57,7 +57,7 @@ def test_short_and_long_cylinders_in_one_array() -> None:
     together = cylinder_form(mixed)
     for row in range(len(moduli)):
         for whole, single in zip(together, cylinder_form(mixed[row : row + 1]), strict=True):
-            np.testing.assert_allclose(whole[row], single[0], rtol=1e-14)
+            np.testing.assert_allclose(whole[row], single[0], rtol=ROUND_OFF)
 
 
 def test_mean_square_of_the_mean_voltage_along_a_cylinder() -> None:
