@@ -6,8 +6,9 @@ import math
 from collections.abc import Sequence
 from typing import TYPE_CHECKING, Any
 
-from cable.desk.messages import shown
+from cable.desk.messages import choices, percent, shown
 from cable.desk.tables import Table
+from cable.desk.terminal import console
 
 if TYPE_CHECKING:
     from cable.noise.excursions import Excursions
@@ -48,6 +49,37 @@ def excursion_about(found: Sequence[Excursions]) -> dict[str, Any]:
     }
 
 
+def print_excursions(found: Sequence[Excursions], share: float, title: str) -> None:
+    """Several sites on the terminal: a row for each, then what is doubtful, said once for all it holds for."""
+    from rich import box
+    from rich.table import Table as Grid
+    from rich.text import Text
+
+    out, level = console(), found[0].level_mV
+    grid = Grid(box=box.SIMPLE_HEAD, pad_edge=False)
+    grid.add_column("site")
+    above = [f"crossings of\n{level:g} mV, Hz", "time\nabove", "if\nGaussian"] if level is not None else []
+    rare = [f"{percent(share)} above\nmV", "if Gaussian\nmV"]
+    for heading in ("mean\nmV", "SD\nmV", "skewness", "excess\nkurtosis", *above, *rare):
+        grid.add_column(heading, justify="right")
+    for one in found:
+        cells = [f"{one.mean_mV:.2f}", _cell(one.sd_mV, ".3f"), _cell(one.skewness, ".3f")]
+        cells += [_cell(one.excess_kurtosis, ".3f")]
+        if level is not None:
+            cells += [_cell(one.upcrossing_Hz, ".3g"), *map(_share, (one.share_above_corrected, one.share_above))]
+        cells += [_cell(value, ".2f") for value in (one.exceeded_corrected_mV(share), one.exceeded_mV(share))]
+        grid.add_row(*(Text(cell) for cell in (shown(one.site, 60), *cells)))
+    out.print(Text(shown(title), style="bold"))
+    out.print(grid)
+    sites: dict[str, list[str]] = {}
+    for one in found:
+        for warning in one.warnings:
+            sites.setdefault(warning, []).append(shown(one.site, 60))
+    for warning, names in sites.items():
+        where = "All sites" if len(names) == len(found) else choices(names, "and")
+        out.print(shown(f"{where}: {warning}.", 1000))
+
+
 def excursion_sentences(one: Excursions, share: float) -> list[str]:
     """What the voltage does at one site, in words; the doubts come last."""
     told = [f"{shown(one.site, 60)}: {one.mean_mV:.2f} ± {_number(one.sd_mV, 'mV')}{_shape(one)}."]
@@ -74,16 +106,20 @@ def _crossings(one: Excursions) -> str:
         crossed = f"How often it crosses {level} is undefined, as it is too rough"
     elif math.isfinite(one.between_upcrossings_s):
         crossed += f", on average once in {one.between_upcrossings_s:.3g} s"
-    gaussian = _percent(one.share_above)
+    gaussian = percent(one.share_above)
     share = f"{gaussian} of the time if Gaussian"
     if not math.isnan(above):
-        share = f"{_percent(above)} of the time (Gaussian: {gaussian})"
+        share = f"{percent(above)} of the time (Gaussian: {gaussian})"
     return f"{crossed}; it is above for {share}."
+
+
+def _cell(value: float, style: str) -> str:
+    return "undefined" if math.isnan(value) else format(value, style)
+
+
+def _share(share: float) -> str:
+    return "undefined" if math.isnan(share) else percent(share)
 
 
 def _number(value: float, unit: str) -> str:
     return f"(undefined) {unit}" if math.isnan(value) else f"{value:.3g} {unit}"
-
-
-def _percent(share: float) -> str:
-    return f"{100 * share:.1f} %" if share >= 0.01 else f"{100 * share:.2g} %"

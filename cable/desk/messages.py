@@ -45,6 +45,11 @@ def did_you_mean(word: str, known: Iterable[str]) -> str:
     return f"did you mean {quoted(close)}?" if close else f"known are {choices([quoted(k) for k in items], 'and')}"
 
 
+def percent(share: float) -> str:
+    """A share as a person reads it: "4.8 %", "0.0065 %"."""
+    return f"{100 * share:.1f} %" if share >= 0.01 else f"{100 * share:.2g} %"
+
+
 def version() -> str:
     """The version of the program."""
     from cable import __version__

@@ -12,6 +12,9 @@ import math
 from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
+import numpy as np
+from numpy.polynomial.hermite_e import hermeval
+from numpy.typing import ArrayLike, NDArray
 from scipy.special import ndtr, ndtri
 
 from cable.noise.cumulants import FINITE_ABOVE, cumulants
@@ -82,14 +85,22 @@ class Excursions:
         return self.mean_mV + self.sd_mV * cornish_fisher(-float(ndtri(share)), self.skewness, self.excess_kurtosis)
 
 
+def edgeworth_density(z: ArrayLike, skewness: float, excess_kurtosis: float) -> NDArray[np.float64]:
+    """(...) density of a distribution of mean 0 and SD 1 at z (...); Edgeworth's series may make it negative."""
+    g, k = skewness / 6, excess_kurtosis / 24
+    x = np.asarray(z, dtype=float)
+    return np.asarray(_bell(x) * hermeval(x, [1, 0, 0, g, k, 0, g * g / 2]))
+
+
 def edgeworth_tail(z: float, skewness: float, excess_kurtosis: float) -> float:
     """Share of a distribution of mean 0 and SD 1 above z; NaN where the series has no positive density there."""
     g, k = skewness / 6, excess_kurtosis / 24
-    third, sixth = z**3 - 3 * z, z**6 - 15 * z**4 + 45 * z**2 - 15
-    density = 1 + g * third + k * (z**4 - 6 * z**2 + 3) + g * g / 2 * sixth
-    bell = math.exp(-z * z / 2) / math.sqrt(2 * math.pi)
-    tail = float(ndtr(-z)) + bell * (g * (z * z - 1) + k * third + g * g / 2 * (z**5 - 10 * z**3 + 15 * z))
-    return tail if density > 0 and 0 <= tail <= 1 else math.nan
+    tail = float(ndtr(-z)) + float(_bell(z) * hermeval(z, [0, 0, g, k, 0, g * g / 2]))
+    return tail if edgeworth_density(z, skewness, excess_kurtosis) > 0 and 0 <= tail <= 1 else math.nan
+
+
+def _bell(z: ArrayLike) -> NDArray[np.float64]:
+    return np.asarray(np.exp(-0.5 * np.square(z)) / math.sqrt(2 * math.pi))
 
 
 def cornish_fisher(z: float, skewness: float, excess_kurtosis: float) -> float:

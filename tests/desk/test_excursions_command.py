@@ -7,7 +7,9 @@ import json
 from collections.abc import Callable
 from pathlib import Path
 
+import numpy as np
 import pytest
+from scipy.integrate import trapezoid
 from typer.testing import Result
 
 from cable.desk.scenario import load_scenario
@@ -48,6 +50,55 @@ def test_table_has_all_sites_and_numbers(run: Callable[..., Result], folder: Pat
     assert 0 < read["certificate"]["cumulant_relative_error"] < 1e-6
 
 
+def test_several_sites_are_a_table_and_doubts_are_said_once(
+    run: Callable[..., Result], edited: Callable[..., Path]
+) -> None:
+    path = edited(("rate_Hz = 2.0", "rate_Hz = 2.0\ncorrelation = 0.05"))
+    said = run("excursions", path.name, "--level-mV", -66)
+    assert said.exit_code == 0
+    for one in load_scenario(path).excursions(level_mV=-66.0):
+        (row,) = [line for line in said.stdout.splitlines() if line.startswith(f" {one.site} ") and "mV" not in line]
+        cells = row.replace(one.site, "").replace(" %", "%").split()
+        assert cells[:4] == [
+            f"{one.mean_mV:.2f}",
+            f"{one.sd_mV:.3f}",
+            f"{one.skewness:.3f}",
+            f"{one.excess_kurtosis:.3f}",
+        ]
+        assert cells[4] == f"{one.upcrossing_Hz:.3g}" and cells[6] == f"{100 * one.share_above:.1f}%"
+        assert cells[7:] == [f"{one.exceeded_corrected_mV(0.01):.2f}", f"{one.exceeded_mV(0.01):.2f}"]
+    words = " ".join(said.stdout.split())
+    assert words.count("copied from one common train") == 1 and "All sites: synapses of 'excitation'" in words
+
+
+def test_figure(run: Callable[..., Result], folder: Path) -> None:
+    from cable.desk.figures.excursions import draw_excursions
+    from cable.desk.figures.style import styled
+
+    for ending in ("png", "svg", "pdf"):
+        assert run("excursions", "stick.toml", "--out", f"e.{ending}").exit_code == 0
+        assert (folder / f"e.{ending}").stat().st_size > 3000
+    assert "skewness" in (folder / "e.svg").read_text()
+    found = load_scenario(folder / "stick.toml").excursions()
+    with styled():
+        page = draw_excursions(found, "stick")
+    assert len(page.axes) == len(found)
+    for one, axes in zip(found, page.axes, strict=True):
+        corrected = axes.lines[-1]
+        x, y = (np.asarray(v, dtype=float) for v in corrected.get_data())
+        inside = np.isfinite(y)
+        whole = trapezoid(y[inside], x[inside]) / one.sd_mV
+        mean = trapezoid((x * y)[inside], x[inside]) / one.sd_mV
+        assert abs(whole - 1) < 0.01 and abs(mean - one.mean_mV) < 0.05 * one.sd_mV
+        assert abs(axes.lines[0].get_xdata()[0] - one.level_mV) < 1e-12
+
+
+def test_figure_of_a_cell_at_rest(run: Callable[..., Result], edited: Callable[..., Path]) -> None:
+    path = edited(("rate_Hz = 2.0", "rate_Hz = 0"), ("rate_Hz = 3.0", "rate_Hz = 0"))
+    assert run("excursions", path.name, "--out", "e.svg").exit_code == 0
+    assert "soma: still" in path.with_name("e.svg").read_text()
+
+
 def test_without_a_level_the_shape_is_told(run: Callable[..., Result], edited: Callable[..., Path]) -> None:
     path = edited(("[threshold]\nlevel_mV = -50.0\n", ""))
     said = run("excursions", path.name, "soma")
@@ -83,7 +134,7 @@ def test_an_undefined_rate_is_said_in_words(run: Callable[..., Result], edited: 
         (("excursions", "stick.toml", "soma", "--level-mV", "high"), "'--level-mV'"),
         (("excursions", "stick.toml", "soma", "--share", "nan"), "--share"),
         (("excursions", "stick.toml", "soma", "--share", "0.7"), "'--share'"),
-        (("excursions", "stick.toml", "--out", "e.png"), "the output ends in .png, expected .csv, .json or .npz"),
+        (("excursions", "stick.toml", "--out", "e.txt"), "the output ends in .txt, expected .csv, .json, .npz, .png"),
         (("excursions", "none.toml"), "cannot be opened"),
         (("excursions", "stick.toml", "--out", "stick.toml"), "expected .csv"),
     ],

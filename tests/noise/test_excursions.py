@@ -10,10 +10,11 @@ import numpy as np
 import pytest
 from numpy.testing import assert_allclose
 from scipy import stats
+from scipy.integrate import quad
 
 from cable import CableModel, Kernel, Membrane, Placed, Shared, SpikeTrain, SynapticInput
 from cable.noise.cumulants import _between, cumulants
-from cable.noise.excursions import Excursions, cornish_fisher, edgeworth_tail
+from cable.noise.excursions import Excursions, cornish_fisher, edgeworth_density, edgeworth_tail
 from morphology import CellTree, Site, Zone
 from noise.cells import EXCITATION, INHIBITION, arbor, model
 from oracles import compartments, shot_noise
@@ -316,6 +317,18 @@ def test_silent_inputs_do_not_matter() -> None:
     silent = on_sphere(name="b", rate_Hz=0.0, kernel=Kernel.alpha(2.0), spike_train=SpikeTrain.gamma(2.0))
     cell = CableModel(RC, PLAIN, (on_sphere(kernel=Kernel.alpha(2.0)), silent))
     assert cell.excursions()[0].skewness == pytest.approx(rc(kernel=Kernel.alpha(2.0)).excursions()[0].skewness)
+
+
+def test_density_has_the_moments_it_was_made_from() -> None:
+    """By adaptive quadrature (scipy), and its tail is the integral above z."""
+    skewness, kurtosis = 0.4, 0.3
+    moments = [
+        quad(lambda z, n=n: z**n * float(edgeworth_density(z, skewness, kurtosis)), -14, 14, limit=200)[0]
+        for n in range(5)
+    ]
+    assert np.allclose(moments, [1, 0, 1, skewness, 3 + kurtosis], rtol=EXACT, atol=EXACT)
+    above = quad(lambda z: float(edgeworth_density(z, skewness, kurtosis)), 1.3, 14)[0]
+    assert abs(edgeworth_tail(1.3, skewness, kurtosis) - above) < EXACT
 
 
 def test_charges_at_once_on_a_neurite() -> None:

@@ -23,14 +23,17 @@ def excursions(
     share: Annotated[
         float, typer.Option(min=1e-9, max=0.5, help="Share of the time for which a level is to be told.")
     ] = 0.01,
-    out: Annotated[str | None, typer.Option(metavar="E.csv|.json|.npz", help="A table, one row a site.")] = None,
+    out: Annotated[
+        str | None,
+        typer.Option(metavar="E.csv|.json|.npz|.png|.svg|.pdf", help="A table, one row a site, or a figure."),
+    ] = None,
     tolerance: Tolerance = 1e-9,
     force: Force = False,
 ) -> None:
     """Skewness and kurtosis, crossings of a level, time above it, and the level exceeded for a share of the time."""
     import math
 
-    from cable.desk.excursion_table import excursion_about, excursion_sentences, excursion_table
+    from cable.desk.excursion_table import excursion_about, excursion_sentences, excursion_table, print_excursions
     from cable.desk.files import output
     from cable.desk.messages import DeskError, shown
     from cable.desk.scenario import read_scenario
@@ -44,15 +47,24 @@ def excursions(
         raise DeskError(f"--level-mV: found {level:g}, expected a finite number of mV; correct it")
     if not math.isfinite(share):
         raise DeskError(f"--share: found {share:g}, expected a number above 0 and up to 0.5; correct it")
-    target = output(out, TABLE_ENDINGS, force, read.files) if out is not None else None
+    target = output(out, (*TABLE_ENDINGS, ".png", ".svg", ".pdf"), force, read.files) if out is not None else None
     mention_findings(read)
     found = read.model.excursions(names, level, tolerance)
     if target is not None:
-        write_table(excursion_table(found, share), target, {**origin(read), **excursion_about(found)})
+        if target.ending in TABLE_ENDINGS:
+            write_table(excursion_table(found, share), target, {**origin(read), **excursion_about(found)})
+        else:
+            from cable.desk.figures.excursions import draw_excursions
+            from cable.desk.figures.style import save, styled
+
+            with styled():
+                save(draw_excursions(found, read.title), target, read.title)
         say_written(target.path)
         return
-    for one in found:
-        for sentence in excursion_sentences(one, share):
+    if len(found) > 1:
+        print_excursions(found, share, read.title)
+    else:
+        for sentence in excursion_sentences(found[0], share):
             console().print(shown(sentence, 1000), markup=False)
     errors = [one.cumulant_relative_error for one in found if not math.isnan(one.cumulant_relative_error)]
     if errors:
