@@ -19,6 +19,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 Floats = NDArray[np.float64]
+Function = Callable[[Floats], Floats]
 
 SAFETY = 10.0
 USUAL = 100.0  # amplitude A for which the first step is chosen; seen: 4 for one pole, up to 60 on real cells
@@ -43,6 +44,7 @@ class Integral:
         relative_error: the certified error, at most, relative to `scale` where one was given.
         at_zero: the functions' values at ω = 0.
         omega_per_ms, weights: (M,) the nodes used and what each counts.
+        step: the distance of the nodes in u.
     """
 
     value: Floats
@@ -50,6 +52,7 @@ class Integral:
     at_zero: Floats
     omega_per_ms: Floats
     weights: Floats
+    step: float
 
 
 def first_step(tolerance: float, strip: float) -> float:
@@ -68,7 +71,7 @@ def _trapezoid_error(difference: float, step: float, strip: float) -> float:
 
 
 def integrate(
-    function: Callable[[Floats], Floats],
+    function: Function,
     scale: Callable[[Floats], Floats],
     slowest_rate_per_ms: float,
     tolerance: float,
@@ -76,6 +79,7 @@ def integrate(
     strip: float = math.pi / 2,
     crowded: bool = False,
     threads: int = 2,
+    adapted: Callable[[float], Function] | None = None,
 ) -> Integral:
     """Integrate `function` over all positive angular frequencies to `tolerance`, relative to `scale` of the result.
 
@@ -89,13 +93,14 @@ def integrate(
         crowded: poles come ever nearer to the real axis at high frequency, as with dead times; then only
             the plain difference of the two rules certifies.
         threads: how many blocks of frequencies are worked on at once.
+        adapted: maps a step h to the function that rules of this step are to sum, where it depends on the step.
 
     Raises:
         NotConverged: the tolerance was not reached with the finest step or the longest range.
     """
     step = first_step(tolerance, strip)
     with ThreadPoolExecutor(threads) as pool:
-        rule = _Rule(function, slowest_rate_per_ms, pool)
+        rule = _Rule(adapted or (lambda _: function), adapted is not None, slowest_rate_per_ms, pool)
         for _ in range(MAX_HALVINGS):
             last = _whole_blocks(first_guess_u / step, threads)
             while True:
@@ -112,7 +117,7 @@ def integrate(
             error = left_out + (SAFETY * difference if crowded else _trapezoid_error(difference, step, strip))
             if error <= tolerance:
                 omega, weights = rule.nodes(step, last)
-                return Integral(total, error, rule.at_zero, omega, weights)
+                return Integral(total, error, rule.at_zero, omega, weights, step)
             step, first_guess_u = step / 2, last * step
     raise NotConverged(f"the frequency integral reached a relative error of {error:.1e}, not {tolerance:.1e}")
 
@@ -127,8 +132,10 @@ def _whole_blocks(wanted: float, threads: int) -> int:
 class _Rule:
     """Trapezoidal sums in u. Sums over blocks of nodes are kept, so that a longer range only adds to them."""
 
-    def __init__(self, function: Callable[[Floats], Floats], omega0: float, pool: ThreadPoolExecutor) -> None:
-        self.function, self.omega0, self.pool = function, omega0, pool
+    def __init__(
+        self, function: Callable[[float], Function], differs: bool, omega0: float, pool: ThreadPoolExecutor
+    ) -> None:
+        self.function_of, self.differs, self.omega0, self.pool = function, differs, omega0, pool
         self.step, self.ends, self.parts = 0.0, [0], list[tuple[Floats, Floats, Floats]]()
         self.at_zero: Floats = np.zeros(0)
 
@@ -143,6 +150,7 @@ class _Rule:
         """The sum with `step`, the sum with twice `step`, and the size of the tail beyond the range."""
         if step != self.step:
             self.step, self.ends, self.parts = step, [0], []
+            self.function, self.coarse = self.function_of(step), self.function_of(2 * step)
         first = self.ends[-1]
         pieces = math.ceil((last + 1 - first) / BLOCK)
         ends = np.linspace(first, last + 1, pieces + 1).astype(int).tolist()
@@ -160,7 +168,8 @@ class _Rule:
         values = self.function(omega)
         if omega[0] == 0:
             self.at_zero = values[..., 0].copy()
-        return values @ weights, values[..., even] @ weights[even], values[..., -2:] * weights[-2:]
+        second = self.coarse(omega[even]) if self.differs else values[..., even]
+        return values @ weights, second @ weights[even], values[..., -2:] * weights[-2:]
 
 
 def _tail(before: Floats, last: Floats) -> Floats:

@@ -93,7 +93,7 @@ def _noise_shares(point: OperatingPoint, node: int, clamp: Electrode, tolerance:
     if not count:
         return [], math.nan
 
-    def spectra(omega: Floats) -> Floats:
+    def spectra(point: OperatingPoint, omega: Floats) -> Floats:
         seen = cross_spectra(point, [node], 1j * omega)[:, 0, 0].real / clamp.resistance_GOhm**2
         own = point.network.columns_at(1j * omega, [node]).impedance_GOhm[0, node] / clamp.resistance_GOhm
         return np.concatenate([seen, np.abs(own) ** 2 * _currents_at_clamp(point, node, 1j * omega)])

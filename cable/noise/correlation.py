@@ -15,6 +15,7 @@ from numpy.typing import NDArray
 from cable.network.elimination import solve
 from cable.network.network import Response
 from cable.noise.integral import VARIANCE_FINITE_ABOVE, integrate_spectra, slowest_rate_per_ms
+from cable.noise.operating_point import OperatingPoint
 from cable.noise.population import Source, couplings, total_spectrum
 from cable.noise.steepness import falls_as
 
@@ -94,10 +95,10 @@ def correlation_map(model: CableModel, site: str, tolerance: float = 1e-6) -> Co
     power = falls_as(point)[rows]
     infinite = power <= VARIANCE_FINITE_ABOVE
 
-    def both(omega: Floats) -> Floats:
+    def both(seen: OperatingPoint, omega: Floats) -> Floats:
         response = point.network.at(omega)
-        covariance = spectra_with(point.sources, response, node)[rows].real
-        values = np.stack([covariance, total_spectrum(point.sources, response)[rows]], axis=1)
+        covariance = spectra_with(seen.sources, response, node)[rows].real
+        values = np.stack([covariance, total_spectrum(seen.sources, response)[rows]], axis=1)
         values[infinite] = 0.0
         return values
 

@@ -12,6 +12,7 @@ from numpy.typing import NDArray
 
 from cable.noise.certificate import Certificate
 from cable.noise.integral import DERIVATIVE_FINITE_ABOVE, VARIANCE_FINITE_ABOVE, integrate_spectra
+from cable.noise.operating_point import OperatingPoint
 from cable.noise.population import Source, shared_spectrum
 from cable.noise.steepness import falls_as
 from cable.theory.units import MOHM_PER_GOHM
@@ -190,13 +191,13 @@ def fluctuations(model: CableModel, tolerance: float = 1e-9) -> Fluctuations:
     wants_derivative = model.threshold_mV is not None
     count = len(model.part_names)
 
-    def spectra(omega: Floats) -> Floats:
+    def spectra(seen: OperatingPoint, omega: Floats) -> Floats:
         response = point.network.at(omega)
         values = np.empty((len(nodes), count + wants_derivative, len(omega)))
-        for k, source in enumerate(point.sources):
+        for k, source in enumerate(seen.sources):
             values[:, k] = source.spectrum(response)[nodes]
-        if count > len(point.sources):
-            values[:, count - 1] = shared_spectrum(point.sources, response)[nodes]
+        if count > len(seen.sources):
+            values[:, count - 1] = shared_spectrum(seen.sources, response)[nodes]
         values[infinite] = 0.0
         if wants_derivative:
             values[:, count] = np.where(rough[:, None], 0.0, omega**2 * values[:, :count].sum(axis=1))
@@ -211,7 +212,7 @@ def fluctuations(model: CableModel, tolerance: float = 1e-9) -> Fluctuations:
     if count:
         powers = np.where(infinite, np.inf, power)
         result = integrate_spectra(point, spectra, scale, tolerance, powers, wants_derivative)
-        error, used = result.relative_error, len(result.omega_per_ms)
+        error, used = result.relative_error, len(result.found.omega_per_ms)
         by_input = np.where(infinite[:, None], np.nan, result.value[:, :count])
         still = result.at_zero[:, :count].sum(axis=1)
         derivative = np.where(rough, np.nan, result.value[:, -1]) if wants_derivative else None

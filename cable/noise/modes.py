@@ -71,7 +71,7 @@ def modes(model: CableModel, count: int, seed: int, tolerance: float) -> Modes:
         raise ValueError("nothing fluctuates in this cell, so it has no modes; give it an input with a rate")
     found = integrate_spectra(
         point,
-        lambda omega: total_spectrum(point.sources, point.network.at(omega)),
+        lambda seen, omega: total_spectrum(seen.sources, point.network.at(omega)),
         lambda variance: variance,
         tolerance,
         falls_as(point),
@@ -79,14 +79,14 @@ def modes(model: CableModel, count: int, seed: int, tolerance: float) -> Modes:
     total = float(weight @ found.value)
     if not total > 0:
         raise ValueError("nothing fluctuates in this cell, so it has no modes; check the sizes of its inputs' events")
-    omega, weights = found.omega_per_ms, found.weights
+    omega, weights, seen = found.found.omega_per_ms, found.found.weights, found.seen.sources
     blocks = [(point.network.at(omega[k : k + BLOCK]), weights[k : k + BLOCK]) for k in range(0, len(omega), BLOCK)]
     rng = np.random.default_rng(seed)
     with ThreadPoolExecutor(2) as pool:
 
         def product(vector: Floats) -> Floats:
             weighted = root_area * np.asarray(vector).ravel()
-            parts = pool.map(lambda b: apply_spectra(point.sources, b[0], weighted).real @ b[1], blocks)
+            parts = pool.map(lambda b: apply_spectra(seen, b[0], weighted).real @ b[1], blocks)
             return root_area * np.sum(list(parts), axis=0)
 
         values, vectors = _leading(product, size, count, rng)

@@ -19,6 +19,7 @@ from cable.network.layout import Layout, lay_out
 from cable.network.loads import Load
 from cable.network.network import Network, Response
 from cable.noise.population import Source
+from cable.noise.smoothing import Smoothing
 from cable.theory.cylinder import mean_square_along, spread_current
 from cable.theory.synapse import SynapticInput
 
@@ -42,6 +43,7 @@ class OperatingPoint:
         reference_mV: the voltage from which `deviation_mV` counts.
         deviation_mV: (E + 1,) mean voltage at nodes, from the reference.
         far_mV: (E,) mean voltage of each piece far from its ends, from the reference.
+        smoothing: how spectra of regular spike trains are smoothed for an integral over frequency, if at all.
     """
 
     model: CableModel
@@ -53,6 +55,7 @@ class OperatingPoint:
     reference_mV: float
     deviation_mV: Floats
     far_mV: Floats
+    smoothing: Smoothing | None = None
 
     @property
     def mean_mV(self) -> Floats:
@@ -107,6 +110,7 @@ class OperatingPoint:
             piece_amplitude=np.sqrt(rate) * on_pieces * mean,
             piece_moment=np.sqrt(rate) * on_pieces * moment,
             node_amplitude=np.sqrt(rate) * at_nodes * node_mean,
+            smoothing=self.smoothing,
         )
 
     def needs_division(self) -> NDArray[np.bool_]:

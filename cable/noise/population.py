@@ -8,6 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from cable.network.network import Response
+from cable.noise.smoothing import Smoothing
 from cable.theory.synapse import SynapticInput
 
 Floats = NDArray[np.float64]
@@ -28,6 +29,7 @@ class Source:
         piece_lean: (E,) centroid of that strength along the piece, from its middle.
         piece_amplitude, node_amplitude: (E,), (E + 1,) sums of √rate·amplitude, pA/√ms.
         piece_moment: (E,) first moment of the amplitude along the piece.
+        smoothing: how spectra of regular trains are smoothed for an integral over frequency; None for the spectra.
     """
 
     population: SynapticInput
@@ -37,6 +39,7 @@ class Source:
     piece_amplitude: Floats
     piece_moment: Floats
     node_amplitude: Floats
+    smoothing: Smoothing | None = None
 
     def alone(self, s_per_ms: NDArray[np.complexfloating], dead_times: bool = True) -> Complexes:
         """(F,) k̂(s)k̂(-s) times what a synapse does by itself: its train's own share and the sizes of events.
@@ -62,6 +65,8 @@ class Source:
         one = self.population
         if one.spike_train.dead_time_ms > 0 and not dead_times:
             return np.ones_like(s_per_ms)
+        if self.smoothing is not None and one.spike_train.process != "poisson":
+            return self.smoothing.spectrum_over_rate(one.spike_train, s_per_ms.imag, one.rate_Hz)
         if not s_per_ms.real.any():  # the closed form for real frequencies keeps its digits near 0
             return one.spike_train.spectrum_over_rate(s_per_ms.imag, one.rate_Hz)
         return one.spike_train.spectrum_over_rate_at(s_per_ms, one.rate_Hz)

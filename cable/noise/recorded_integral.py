@@ -67,7 +67,7 @@ def integral(
     poles = [complex(p) for one in electrodes for p in one.poles_per_ms]
     omega0 = min([slowest, *(abs(p) for p in poles)])
     strip = min([analytic_strip(point, omega0), *(abs(cmath.asinh(1j * p / omega0).imag) for p in poles)])
-    reach = range_u(point, falls_as(point)[nodes], False, tolerance) + math.log(slowest / omega0)
+    reach = range_u(point, falls_as(point)[nodes], False, tolerance, slowest) + math.log(slowest / omega0)
     crowded = any(one.spike_train.dead_time_ms > 0 for one in point.model.inputs)
     found = integrate(function, scale, omega0, tolerance, reach, strip, crowded)
     value, error = found.value, found.relative_error

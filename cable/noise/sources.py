@@ -117,15 +117,15 @@ def sources(model: CableModel, site: str, tolerance: float = 1e-9) -> Sources:
     point = model.refined.point
     node, size = model.node_of(site), len(model.tree)
 
-    def by_row(omega: Floats) -> Floats:
+    def by_row(seen: OperatingPoint, omega: Floats) -> Floats:
         response = point.network.at(omega)
         parts = np.zeros((size, len(model.part_names), len(omega)))
         z = response.column(node)
-        for k, source in enumerate(point.sources):
+        for k, source in enumerate(seen.sources):
             parts[:, k] = _parts(source, response, z, point)
-        for i, j, correlation in couplings(point.sources):
+        for i, j, correlation in couplings(seen.sources):
             for one, other in ((i, j), (j, i)):
-                parts[:, -1] += correlation * _in_step(point.sources[one], point.sources[other], response, z, point)
+                parts[:, -1] += correlation * _in_step(seen.sources[one], seen.sources[other], response, z, point)
         return np.concatenate([parts, parts.sum(axis=0, keepdims=True)])  # the sum is certified too
 
     def scale(integrals: Floats) -> Floats:

@@ -98,6 +98,23 @@ class SpikeTrain:
         step = hazard * self.dead_time_ms
         return 1 / (1 + 2 * step * np.sinc(2 * half / np.pi) + step**2 * np.sinc(half / np.pi) ** 2)
 
+    def one_sided_over_rate(self, s_per_ms: NDArray[np.complex128], rate_Hz: float) -> NDArray[np.complex128]:
+        """1 + 2∫₀^∞ (R(t) - r) e^{-st} dt at s (...) with Re s > 0, R(t) the rate of spikes at t after a spike.
+
+        For a renewal train the integral is φ/(1 - φ) - r/s. On the imaginary axis the real part is the spectrum over
+        the rate; to the right of it nothing oscillates, however regular the train.
+        """
+        s, rate = np.asarray(s_per_ms, dtype=complex), rate_Hz * PER_MS_PER_HZ
+        if self.process == "poisson" or rate == 0:
+            return np.ones(s.shape, dtype=np.complex128)
+        if self.process == "gamma":
+            order = complex(self.order)
+            after = -1 - 1 / np.expm1(-order * _log1p(s / (order * rate)))
+        else:
+            hazard, dead = rate / (1 - rate * self.dead_time_ms), self.dead_time_ms
+            after = hazard * np.exp(-s * dead) / (s - hazard * np.expm1(-s * dead))
+        return np.asarray(1 + 2 * (after - rate / s))
+
     def spectrum_over_rate_at(self, s_per_ms: NDArray[np.complex128], rate_Hz: float) -> NDArray[np.complex128]:
         """The same continued to complex s = iω (...), 1/ms: (1 - φ(s)φ(-s))/((1 - φ(s))(1 - φ(-s))).
 

@@ -36,7 +36,7 @@ def test_error_is_below_what_is_certified(name: str, tolerance: float) -> None:
         spike_train=train,
     )
     cell = CableModel(arbor(3, 40), MEMBRANE, (one,))
-    exact = cell.fluctuations(1e-10 if name == "dead time" else 1e-12).variance_mV2
+    exact = cell.fluctuations(1e-12).variance_mV2
     rough = cell.fluctuations(tolerance)
     assert rough.certificate.quadrature_relative_error <= tolerance
     error = np.abs(rough.variance_mV2 / exact - 1).max()

@@ -156,6 +156,21 @@ def test_dead_time_on_an_uneven_tree_in_both_directions() -> None:
     assert abs(want[0, 1, 1] / want[0, 1, 5] - 1) > 1e-2  # the pair has a direction
 
 
+def test_variances_of_ringing_trains_are_their_covariances_at_lag_0() -> None:
+    """Smoothing at real frequencies against waves on the bent path, which share no formula of the train."""
+    tree = arbor(11, 40)
+    one = replace(EXCITATION, rate_Hz=40.0, conductance_nS=0.02, spike_train=SpikeTrain.dead_time(22.0), size_cv=0.3)
+    two = replace(INHIBITION, correlation=0.1, rate_Hz=30.0, spike_train=SpikeTrain.dead_time(6.0))
+    cell = model(tree, one, two, sites=(Site("a", swc_id=int(tree.ids[29])),))
+    found = covariances(cell, ("a", "soma"), np.zeros(1))
+    field = cell.fluctuations()
+    for k, site in enumerate(("a", "soma")):
+        got = field.at(site).variance_by_input_mV2
+        assert_allclose(list(got.values()), found.at_zero_mV2[:, k, k], rtol=EXACT)
+        slow = cell.spectrum(site, np.zeros(1)).psd_mV2_per_Hz[0]  # one-sided: 4·(two-sided per rad/ms)·1e-3
+        assert_allclose(field.at(site).correlation_time_ms, slow / 4e-3 / field.at(site).variance_mV2, rtol=EXACT)
+
+
 def test_dead_time_of_nearly_the_whole_interval_is_refused_with_a_way_out() -> None:
     cell = sphere(99.9, SpikeTrain.dead_time(10.0))
     with pytest.raises(NotConverged, match="use a shorter dead time"):

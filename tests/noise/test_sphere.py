@@ -121,6 +121,15 @@ def test_regular_spike_trains(train: SpikeTrain) -> None:
     assert field.variance_mV2[0] == pytest.approx(want, rel=EXACT)
 
 
+@pytest.mark.parametrize("train", [SpikeTrain.gamma(60), SpikeTrain.dead_time(40.0), SpikeTrain.dead_time(49.7)])
+def test_trains_that_ring_cost_no_more_than_others(train: SpikeTrain) -> None:
+    field = answer(drive(Kernel.exponential(2.0), rate_Hz=20.0, spike_train=train))
+    want = (CHARGE_FC * RESISTANCE_GOHM) ** 2 * renewal_variance(train, 0.02, 2.0)
+    assert field.variance_mV2[0] == pytest.approx(want, rel=EXACT)
+    assert field.certificate.frequencies <= 120
+    assert field.correlation_time_ms[0] < 0.2 * answer(drive(Kernel.exponential(2.0))).correlation_time_ms[0]
+
+
 def test_renewal_variance_reaches_the_published_ones_as_events_shorten() -> None:
     """Jumps of 0.2 mV, 20 ms, 20/s: gamma of order 2 0.00553846153846, dead time 10 ms 0.00565457065693 mV²."""
     for train, typed in ((SpikeTrain.gamma(2), 0.00553846153846), (SpikeTrain.dead_time(10.0), 0.00565457065693)):
