@@ -147,10 +147,10 @@ def record_sentences(study: RecordStudy) -> list[str]:
     true, loaded, record, unit = recording.true, recording.loaded, recording.recorded, recording.electrode.unit
     what = "the current of an ideal clamp" if unit == "pA" else "the voltage of the cell without electrodes"
     passing = "with the resistance that is left" if unit == "pA" else "with its electrodes"
+    unloaded = study.assumed and (loaded.mean, loaded.sd) == (true.mean, true.sd)
     said = [
-        f"At {shown(recording.electrode.site, 60)} {what} is {true.mean:.4g} {unit} with an SD of "
-        f"{true.sd:.4g} {unit}; "
-        f"{passing} it is {loaded.mean:.4g} {unit} with an SD of {loaded.sd:.4g} {unit}.",
+        f"At {shown(recording.electrode.site, 60)} {what} is {true.mean:.4g} {unit} with an SD of {true.sd:.4g} {unit}"
+        + ("." if unloaded else f"; {passing} it is {loaded.mean:.4g} {unit} with an SD of {loaded.sd:.4g} {unit}."),
         f"The record has an SD of {record.sd:.4g} {unit}"
         + ("" if recording.electrode.keeps_mean else " and has lost the mean")
         + f"; the amplifier shows an input resistance of {recording.input_resistance_MOhm:.4g} MΩ.",

@@ -14,8 +14,8 @@ if TYPE_CHECKING:
     from cable.noise.spectra import Spectrum
 
 
-def spectrum_table(spectrum: Spectrum) -> Table:
-    """One row per frequency: density in all and by input, impedance as size and phase."""
+def spectrum_table(spectrum: Spectrum, temperature_C: float | None = None) -> Table:
+    """One row per frequency: density in all and by input, impedance as size and phase; thermal noise if asked for."""
     z = spectrum.input_impedance_MOhm
     columns = {"frequency_Hz": spectrum.frequency_Hz, "psd_mV2_per_Hz": spectrum.psd_mV2_per_Hz}
     columns |= {f"psd_{name}_mV2_per_Hz": part for name, part in spectrum.psd_by_input_mV2_per_Hz.items()}
@@ -23,10 +23,12 @@ def spectrum_table(spectrum: Spectrum) -> Table:
     if spectrum.transfer_impedance_MOhm is not None:
         transfer = spectrum.transfer_impedance_MOhm
         columns |= {"transfer_impedance_MOhm": np.abs(transfer), "transfer_phase_rad": np.unwrap(np.angle(transfer))}
+    if temperature_C is not None:
+        columns["psd_thermal_mV2_per_Hz"] = spectrum.thermal_mV2_per_Hz(temperature_C)
     return Table(columns)
 
 
-def spectrum_sentences(spectrum: Spectrum) -> list[str]:
+def spectrum_sentences(spectrum: Spectrum, temperature_C: float | None = None) -> list[str]:
     """What a person wants to know of a spectrum first."""
     psd, frequency = spectrum.psd_mV2_per_Hz, spectrum.frequency_Hz
     half = frequency[psd >= psd[0] / 2]
@@ -41,4 +43,18 @@ def spectrum_sentences(spectrum: Spectrum) -> list[str]:
     sentences.append(
         f"The input impedance is {z[0]:.4g} MΩ at {frequency[0]:g} Hz and {z[-1]:.4g} MΩ at {frequency[-1]:g} Hz."
     )
+    if temperature_C is not None:
+        sentences.append(_thermal(spectrum, temperature_C))
     return sentences
+
+
+def _thermal(spectrum: Spectrum, temperature_C: float) -> str:
+    """How the cell's thermal noise compares."""
+    thermal, frequency = spectrum.thermal_mV2_per_Hz(temperature_C), spectrum.frequency_Hz
+    told = f"Thermal noise at {temperature_C:g} °C is {thermal[0]:.3g} mV²/Hz at {frequency[0]:g} Hz"
+    above = np.flatnonzero(thermal >= spectrum.psd_mV2_per_Hz)
+    if not len(above):
+        return f"{told} and stays below the synaptic noise up to {frequency[-1]:g} Hz."
+    if above[0] == 0:
+        return f"{told}, more than the synaptic noise."
+    return f"{told} and exceeds the synaptic noise from {frequency[above[0]]:.4g} Hz."

@@ -36,6 +36,7 @@ conductance_nS = 0.25           # peak of one event
 reversal_mV = 0.0
 kernel = { rise_ms = 0.2, decay_ms = 2.0 }   # or { decay_ms }, { alpha_ms }, { expression = "t*exp(-t/2)" }
 correlation = 0.003             # of the spike trains of any two synapses of this input
+size_cv = 0.0                   # coefficient of variation of the size of its events
 spike_train = { process = "poisson" }        # or { process = "gamma", order = 2 }, or { dead_time_ms = 3 }
 
 [[input]]
@@ -47,6 +48,11 @@ conductance_nS = 0.2
 reversal_mV = 0.0
 kernel = { rise_ms = 0.3, decay_ms = 2.5 }
 correlation = 0.003
+
+# Instead of conductance_nS and reversal_mV an event may be a current: current_pA, or charge_fC (without a kernel the
+# charge comes at once). Instead of a density, synapses may be listed one by one: synapses = "list.csv", a file with
+# the column swc_id and, where wanted, fraction and number. Inputs may have spikes in common:
+# shares = [{ input = "glutamate_basal", fraction = 0.001 }].
 
 [[input]]
 name = "GABA"                   # soma and proximal dendrites
@@ -69,6 +75,13 @@ at = { kinds = ["apical"], path_um = 250, radius_um = [1.2, inf] }
 [[site]]
 name = "tuft"
 at = { swc_id = 1125, fraction = 0.5 }
+
+# A pipette loads the cell and filters what is recorded; take the # away to have one at the soma, and ask `record`.
+#[[electrode]]
+#site = "soma"
+#series_resistance_MOhm = 12.0
+#pipette_capacitance_pF = 6.0
+#filter = { family = "bessel", order = 4, corner_Hz = 2000 }
 
 [threshold]
 level_mV = -50.0

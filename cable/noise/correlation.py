@@ -112,6 +112,7 @@ def correlation_map(model: CableModel, site: str, tolerance: float = 1e-6) -> Co
     spectrum = spectra_with(point.sources, point.network.at(slow), node)[rows, 0]
     with np.errstate(divide="ignore", invalid="ignore"):
         correlation = covariance / np.sqrt(variance * variance[here])
+        spectrum[here] = spectrum[here].real  # its own lag is 0, not the rounding of it
         # not the angle, which jumps by π where places move against each other
         lag = -spectrum.imag / spectrum.real / slow[0]
     return CorrelationMap(

@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 
 from cable.noise.cross import BLOCK, by_frequency
 from cable.noise.steepness import falls_as
-from cable.theory.units import MOHM_PER_GOHM, OMEGA_PER_MS_PER_HZ, one_sided_per_Hz
+from cable.theory.units import MOHM_PER_GOHM, OMEGA_PER_MS_PER_HZ, one_sided_per_Hz, thermal_psd_mV2_per_Hz
 
 if TYPE_CHECKING:
     from cable.noise.model import CableModel
@@ -47,6 +47,17 @@ class Spectrum:
     def psd_mV2_per_Hz(self) -> Floats:
         """(F,) one-sided power spectral density of all inputs together, mV²/Hz."""
         return np.sum([*self.psd_by_input_mV2_per_Hz.values(), np.zeros(len(self.frequency_Hz))], axis=0)
+
+    def thermal_mV2_per_Hz(self, temperature_C: float) -> Floats:
+        """(F,) one-sided density of the thermal noise of membrane and cytoplasm at a temperature, mV²/Hz.
+
+        Every resistance of the cell makes it, so it is 4kT times the real part of the input impedance (Nyquist 1928,
+        Phys Rev 32:110). Synaptic conductances count as ordinary resistances at the same temperature.
+
+        Raises:
+            ValueError: a temperature at or below absolute zero.
+        """
+        return thermal_psd_mV2_per_Hz(self.input_impedance_MOhm.real, temperature_C)
 
     @property
     def slope(self) -> float:

@@ -17,6 +17,9 @@ MOHM_PER_GOHM = 1e3
 PER_MS_PER_HZ = 1e-3
 OMEGA_PER_MS_PER_HZ = 2 * math.pi * PER_MS_PER_HZ
 
+BOLTZMANN_J_PER_K = 1.380649e-23  # exact by the definition of the kelvin (BIPM 2019, The International System of Units)
+KELVIN_AT_0_C = 273.15
+
 
 def conductance_nS_per_um2(resistance_ohm_cm2: Value) -> Value:
     """Specific membrane conductance (nS/µm²) of a specific membrane resistance (Ω·cm²)."""
@@ -31,6 +34,20 @@ def capacitance_pF_per_um2(capacitance_uF_cm2: Value) -> Value:
 def resistivity_GOhm_um(axial_resistivity_ohm_cm: Value) -> Value:
     """Axial resistivity in GΩ·µm from Ω·cm."""
     return 1e-5 * axial_resistivity_ohm_cm
+
+
+def thermal_psd_mV2_per_Hz(resistance_MOhm: Value, temperature_C: float) -> Value:
+    """One-sided density 4kT·Re Z of the thermal voltage of an impedance with this real part, mV²/Hz.
+
+    Johnson 1928 and Nyquist 1928, Phys Rev 32:97 and 110.
+
+    Raises:
+        ValueError: a temperature at or below absolute zero.
+    """
+    kelvin = temperature_C + KELVIN_AT_0_C
+    if not 0 < kelvin < math.inf:
+        raise ValueError(f"temperature_C: expected more than -273.15 °C, found {temperature_C:g}")
+    return 4 * BOLTZMANN_J_PER_K * kelvin * 1e12 * resistance_MOhm  # V²/Hz to mV²/Hz, Ω to MΩ
 
 
 def one_sided_per_Hz(two_sided_per_rad_ms: Value) -> Value:

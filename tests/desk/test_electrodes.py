@@ -33,6 +33,20 @@ def test_spectrum_as_table_and_sentences(run, folder) -> None:
     assert "input impedance" in told.output and "mV²/Hz" in told.output
 
 
+def test_thermal_noise_beside_the_synaptic(run, folder) -> None:
+    asked = ("spectrum", folder / "stick.toml", "soma", "--temperature-C", "36", "--points", "5")
+    assert run(*asked, "--out", folder / "S.csv").exit_code == 0
+    for row in rows_of(folder / "S.csv"):
+        real = row["input_impedance_MOhm"] * np.cos(row["input_phase_rad"])
+        want = 4 * 1.380649e-23 * 309.15 * real * 1e12  # Nyquist 1928, Phys Rev 32:110
+        assert row["psd_thermal_mV2_per_Hz"] == pytest.approx(want, rel=1e-12)
+    assert "Thermal noise at 36 °C is" in run(*asked).output
+    assert run(*asked, "--out", folder / "S.svg").exit_code == 0
+    assert "thermal, 36 °C" in (folder / "S.svg").read_text(encoding="utf-8")
+    cold = run("spectrum", folder / "stick.toml", "soma", "--temperature-C", "-300")
+    assert cold.exit_code == 2 and "--temperature-C: found -300" in cold.stderr
+
+
 def test_pair_as_document_and_table(run, folder) -> None:
     for name in ("C.json", "C.csv"):
         result = run("pair", folder / "stick.toml", "soma", "half way", "--out", folder / name, "--lag-ms", "40")

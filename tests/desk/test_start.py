@@ -33,6 +33,24 @@ def test_the_example_is_in_the_range_of_an_awake_cell():
     assert 2 < soma.sd_mV < 4 and -62 < soma.mean_mV < -58
 
 
+def test_what_stands_in_comments_works_when_it_is_taken_out_of_them(folder):
+    path = write_example(folder / "demo")
+    text = path.read_text()
+    for line in ("#[[electrode]]", "#site", "#series_res", "#pipette", "#filter"):
+        assert line in text
+        text = text.replace(line, line[1:])
+    shares = text.partition("shares = ")[2].partition("]")[0] + "]"
+    text = text.replace("\ncorrelation = 0.003\n", f"\ncorrelation = 0.003\nshares = {shares}\n")
+    listed = text.replace("density_per_um2 = 0.02\n", 'synapses = "list.csv"\n').replace(
+        'where = { kinds = ["soma", "basal", "apical"], path_um = [0, 150] }\n', ""
+    )
+    (path.parent / "list.csv").write_text("swc_id,fraction,number\n211,0.5,3\n1,,\n")
+    path.write_text(listed)
+    model = read_scenario(path).model
+    assert model.electrodes[0].pipette_capacitance_pF == 6.0 and model.part_names[-1] == "shared"
+    assert [one.number for one in model.inputs[2].at] == [3.0, 1.0]
+
+
 def test_next_command_is_said_and_works(run, folder):
     result = run("start", "my demo")
     assert result.exit_code == 0

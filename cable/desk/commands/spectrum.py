@@ -21,6 +21,9 @@ def spectrum(
     to_Hz: Annotated[float, typer.Option("--to-Hz", help="Highest frequency.")] = 1000.0,
     points: Annotated[int, typer.Option(min=2, max=5000, help="Frequencies, evenly spaced in the logarithm.")] = 61,
     to: Annotated[str | None, typer.Option(metavar="SITE", help="Add the transfer impedance to this site.")] = None,
+    temperature_C: Annotated[
+        float | None, typer.Option("--temperature-C", metavar="X", help="Add the cell's thermal noise at this.")
+    ] = None,
     force: Force = False,
 ) -> None:
     """Power spectral density of the voltage at a site, in all and by input, and its input impedance."""
@@ -38,6 +41,8 @@ def spectrum(
         raise DeskError(
             f"--from-Hz, --to-Hz: found {from_Hz:g} to {to_Hz:g}, expected 0 < from < to < 1e7; choose another range"
         )
+    if temperature_C is not None and not -273.15 < temperature_C < 1e3:
+        raise DeskError(f"--temperature-C: found {temperature_C:g}, expected degrees Celsius, such as 36; correct it")
     read = read_scenario(scenario)
     names = read.site(site), None if to is None else read.site(to)
     endings = (*TABLE_ENDINGS, ".png", ".svg", ".pdf")
@@ -45,15 +50,15 @@ def spectrum(
     mention_findings(read)
     found = read.model.spectrum(names[0], np.geomspace(from_Hz, to_Hz, points), names[1])
     if target is None:
-        for sentence in spectrum_sentences(found):
+        for sentence in spectrum_sentences(found, temperature_C):
             console().print(sentence, markup=False)
         return
     if target.ending in TABLE_ENDINGS:
-        write_table(spectrum_table(found), target, {**origin(read), "site": site, "slope": found.slope})
+        write_table(spectrum_table(found, temperature_C), target, {**origin(read), "site": site, "slope": found.slope})
     else:
         from cable.desk.figures.spectrum import draw_spectrum
         from cable.desk.figures.style import save, styled
 
         with styled():
-            save(draw_spectrum(found, read.title), target, read.title)
+            save(draw_spectrum(found, read.title, temperature_C), target, read.title)
     say_written(target.path)

@@ -111,7 +111,9 @@ def draw_map(
         axes.set_xlim(middle[0] - half[0], middle[0] + half[0])
         axes.set_ylim(middle[1] - half[1] - foot, middle[1] + half[1] - foot)
         norm = _draw_cell(axes, model, chosen, quantity.values(field), plan.mm_per_um)
-        page.colorbar(ScalarMappable(norm, colour_map()), cax=bar).set_label(shown(quantity.label, 60))
+        page.colorbar(ScalarMappable(norm, colour_map()), cax=bar)
+        # above the bar, where no width of the numbers pushes it off the page
+        bar.set_title("\n".join(textwrap.wrap(shown(quantity.label, 60), 12)), fontsize=7.0, loc="left", pad=7.0)
         bar.locator_params(nbins=6)
         bar.spines["outline"].set_linewidth(0.5)
         if i == 0:

@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 from matplotlib.figure import Figure
 
-from cable.desk.figures.style import COLUMN_MM, GREY, INK, figure, plain_powers
+from cable.desk.figures.style import COLUMN_MM, GREY, INK, PALE, figure, plain_powers
 from cable.desk.messages import shown
 
 if TYPE_CHECKING:
@@ -17,7 +17,7 @@ HEIGHT_MM, LEFT, RANGE = 96.0, 0.19, 1e7
 DASHES = ((0, ()), (0, (5, 2)), (0, (1.5, 1.5)), (0, (6, 2, 1.5, 2)), (0, (3, 1.2)))
 
 
-def draw_spectrum(spectrum: Spectrum, title: str = "") -> Figure:
+def draw_spectrum(spectrum: Spectrum, title: str = "", temperature_C: float | None = None) -> Figure:
     """Density and impedance against frequency, both on logarithmic axes; call it inside `styled`."""
     page = figure(COLUMN_MM, HEIGHT_MM)
     upper = page.add_axes((LEFT, 0.44, 0.97 - LEFT, 0.46))
@@ -26,8 +26,13 @@ def draw_spectrum(spectrum: Spectrum, title: str = "") -> Figure:
     upper.loglog(f, spectrum.psd_mV2_per_Hz, color=INK, linewidth=1.6, label="all inputs")
     for k, (name, part) in enumerate(spectrum.psd_by_input_mV2_per_Hz.items()):
         upper.loglog(f, part, color=GREY, linewidth=0.9, linestyle=DASHES[(k + 1) % len(DASHES)], label=shown(name, 30))
+    if temperature_C is not None:
+        label = f"thermal, {temperature_C:g} °C".replace("-", "−")
+        upper.loglog(f, spectrum.thermal_mV2_per_Hz(temperature_C), color=PALE, linewidth=1.6, label=label)
     top = float(spectrum.psd_mV2_per_Hz.max(initial=0.0)) or 1.0
     bottom = max(float(spectrum.psd_mV2_per_Hz.min(initial=top)), top / RANGE)
+    if temperature_C is not None:
+        bottom = min(bottom, float(spectrum.thermal_mV2_per_Hz(temperature_C).min())) / 1e3  # room for the names
     upper.set_ylim(bottom / 3, top * 2)
     upper.legend(frameon=False, loc="lower left")
     lower.loglog(f, np.abs(spectrum.input_impedance_MOhm), color=INK, linewidth=1.3, label="input")
