@@ -80,6 +80,7 @@ def integrate(
     crowded: bool = False,
     threads: int = 2,
     adapted: Callable[[float], Function] | None = None,
+    block: int = BLOCK,
 ) -> Integral:
     """Integrate `function` over all positive angular frequencies to `tolerance`, relative to `scale` of the result.
 
@@ -93,6 +94,7 @@ def integrate(
         crowded: poles come ever nearer to the real axis at high frequency, as with dead times; then only
             the plain difference of the two rules certifies.
         threads: how many blocks of frequencies are worked on at once.
+        block: how many frequencies are handled at once.
         adapted: maps a step h to the function that rules of this step are to sum, where it depends on the step.
 
     Raises:
@@ -100,9 +102,9 @@ def integrate(
     """
     step = first_step(tolerance, strip)
     with ThreadPoolExecutor(threads) as pool:
-        rule = _Rule(adapted or (lambda _: function), adapted is not None, slowest_rate_per_ms, pool)
+        rule = _Rule(adapted or (lambda _: function), adapted is not None, slowest_rate_per_ms, pool, block)
         for _ in range(MAX_HALVINGS):
-            last = _whole_blocks(first_guess_u / step, threads)
+            last = _whole_blocks(first_guess_u / step, block, threads)
             while True:
                 total, coarse, tail = rule.sums(step, last)
                 size = scale(total)
@@ -110,7 +112,7 @@ def integrate(
                 left_out = float(np.max(tail / size, initial=0.0))
                 if left_out <= 0.3 * tolerance:
                     break
-                last += BLOCK
+                last += block
                 if last * step > MAX_U:
                     raise NotConverged("the spectrum falls too slowly for its integral to be certified")
             difference = float(np.max(np.abs(total - coarse) / size, initial=0.0))
@@ -122,10 +124,10 @@ def integrate(
     raise NotConverged(f"the frequency integral reached a relative error of {error:.1e}, not {tolerance:.1e}")
 
 
-def _whole_blocks(wanted: float, threads: int) -> int:
+def _whole_blocks(wanted: float, block: int, threads: int) -> int:
     """The last node's index for about `wanted` nodes, so that blocks are full or of one size for all threads."""
     nodes = max(4, math.ceil(wanted) + 1)
-    blocks = math.ceil(nodes / BLOCK / threads) * threads
+    blocks = math.ceil(nodes / block / threads) * threads
     return math.ceil(nodes / blocks) * blocks - 1
 
 
@@ -133,9 +135,9 @@ class _Rule:
     """Trapezoidal sums in u. Sums over blocks of nodes are kept, so that a longer range only adds to them."""
 
     def __init__(
-        self, function: Callable[[float], Function], differs: bool, omega0: float, pool: ThreadPoolExecutor
+        self, function: Callable[[float], Function], differs: bool, omega0: float, pool: ThreadPoolExecutor, block: int
     ) -> None:
-        self.function_of, self.differs, self.omega0, self.pool = function, differs, omega0, pool
+        self.function_of, self.differs, self.omega0, self.pool, self.block = function, differs, omega0, pool, block
         self.step, self.ends, self.parts = 0.0, [0], list[tuple[Floats, Floats, Floats]]()
         self.at_zero: Floats = np.zeros(0)
 
@@ -152,7 +154,7 @@ class _Rule:
             self.step, self.ends, self.parts = step, [0], []
             self.function, self.coarse = self.function_of(step), self.function_of(2 * step)
         first = self.ends[-1]
-        pieces = math.ceil((last + 1 - first) / BLOCK)
+        pieces = math.ceil((last + 1 - first) / self.block)
         ends = np.linspace(first, last + 1, pieces + 1).astype(int).tolist()
         omega, weights = self.nodes(step, last)
         jobs = [(omega[a:b], weights[a:b], np.arange(a, b) % 2 == 0) for a, b in pairwise(ends)]

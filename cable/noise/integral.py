@@ -11,12 +11,13 @@ from functools import partial
 import numpy as np
 from numpy.typing import NDArray
 
-from cable.network.quadrature import Integral, NotConverged, integrate
+from cable.network.quadrature import BLOCK, Integral, NotConverged, integrate
 from cable.noise.operating_point import OperatingPoint
 from cable.noise.smoothing import Smoothing
 
 Floats = NDArray[np.float64]
 VARIANCE_FINITE_ABOVE = 1.0  # the power of 1/ω above which ∫S dω is finite
+VALUES_AT_ONCE = 300_000  # nodes times frequencies; smaller blocks cost more in calls, larger ones memory
 DERIVATIVE_FINITE_ABOVE = 3.0  # the power of 1/ω above which ∫ω²S dω is finite
 
 
@@ -71,7 +72,7 @@ def integrate_spectra(
     if not _trains_ring(point):
         omega0 = slowest_rate_per_ms(point)
         reach, strip = range_u(point, power, derivative, tolerance, omega0), analytic_strip(point, omega0)
-        found = integrate(partial(spectra, point), scale, omega0, tolerance, reach, strip)
+        found = integrate(partial(spectra, point), scale, omega0, tolerance, reach, strip, block=block_for(point))
         return SpectralIntegral(found, point, found.at_zero)
     omega0 = cell_rate_per_ms(point)
 
@@ -86,8 +87,14 @@ def integrate_spectra(
         range_u(point, power, derivative, tolerance, omega0),
         _cell_strip(point, omega0) / 2,  # sinc interpolation errs by the root of the trapezoidal rule's error
         adapted=lambda step: partial(spectra, smoothed(step)),
+        block=block_for(point),
     )
     return SpectralIntegral(found, smoothed(found.step), spectra(point, np.zeros(1))[..., 0])
+
+
+def block_for(point: OperatingPoint) -> int:
+    """How many frequencies to handle at once, so that memory stays bounded on the largest cells."""
+    return max(2, min(BLOCK, VALUES_AT_ONCE // len(point.layout.parent)))
 
 
 def _trains_ring(point: OperatingPoint) -> bool:

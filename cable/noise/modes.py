@@ -22,7 +22,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from cable.noise.correlation import apply_spectra
-from cable.noise.integral import integrate_spectra
+from cable.noise.integral import block_for, integrate_spectra
 from cable.noise.population import total_spectrum
 from cable.noise.steepness import falls_as
 
@@ -30,7 +30,6 @@ if TYPE_CHECKING:
     from cable.noise.model import CableModel
 
 Floats = NDArray[np.float64]
-BLOCK = 8
 PROBES = 24
 FEW = 64  # nodes up to which all modes are found at once
 
@@ -80,7 +79,8 @@ def modes(model: CableModel, count: int, seed: int, tolerance: float) -> Modes:
     if not total > 0:
         raise ValueError("nothing fluctuates in this cell, so it has no modes; check the sizes of its inputs' events")
     omega, weights, seen = found.found.omega_per_ms, found.found.weights, found.seen.sources
-    blocks = [(point.network.at(omega[k : k + BLOCK]), weights[k : k + BLOCK]) for k in range(0, len(omega), BLOCK)]
+    width = block_for(point)
+    blocks = [(point.network.at(omega[k : k + width]), weights[k : k + width]) for k in range(0, len(omega), width)]
     rng = np.random.default_rng(seed)
     with ThreadPoolExecutor(2) as pool:
 
