@@ -11,8 +11,9 @@ from matplotlib.colors import to_rgb
 from PIL import Image
 
 from cable import load_scenario
-from cable.desk.figures.map import THINNEST_PT, draw_map, layout, round_length, site_places
-from cable.desk.figures.projection import bounds, cut, flattest_plane
+from cable.desk.figures.map import THINNEST_PT, draw_map, layout, round_length
+from cable.desk.figures.marks import site_marks
+from cable.desk.figures.projection import bounds, cut, flat_xy, flattest_plane
 from cable.desk.figures.style import PT_PER_MM, colour_map, save, styled
 from cable.desk.files import output
 from cable.desk.quantities import quantities
@@ -123,7 +124,8 @@ def test_scale_bars_are_round(longest):
 
 
 def test_sites_are_marked_where_they_are(folder):
-    marks = site_places(load_scenario(folder / "stick.toml"), "xy")
+    model = load_scenario(folder / "stick.toml")
+    marks = site_marks(model, flat_xy(model.tree, "xy"))
     assert [(m.name, round(m.x, 6), m.y) for m in marks] == [
         ("soma", 0, 0),
         ("half way", 310, 0),
@@ -195,7 +197,7 @@ def test_shares_of_named_inputs(run, folder):
         (["--quantity", "deviation"], ['"deviation"', "mean, sd, variance"]),
         (["--quantity", "share"], ["needs --input", '"excitation" and "inhibition"']),
         (["--quantity", "sd", "--input", "excitation"], ["--quantity share"]),
-        (["--plane", "zx"], ['"zx"', "xy, xz or yz"]),
+        (["--plane", "zx"], ['"zx"', "xy, xz, yz or flat"]),
         (["--input", "exitation"], ['no input "exitation"', '"excitation"']),
     ],
 )

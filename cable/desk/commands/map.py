@@ -20,7 +20,13 @@ def map_(
         str | None,
         typer.Option("--with", metavar="SITE", help="The site of correlation, lag, source and charge-share."),
     ] = None,
-    plane: Annotated[str | None, typer.Option(metavar="xy|xz|yz", help="The plane to draw; else the flattest.")] = None,
+    plane: Annotated[
+        str | None,
+        typer.Option(metavar="xy|xz|yz|flat", help="The plane to draw, flat: however turned; else the best of three."),
+    ] = None,
+    branches: Annotated[
+        bool, typer.Option("--branches", help="A diagram in which no branch hides another, by path distance.")
+    ] = False,
     tolerance: Tolerance = 1e-9,
     force: Force = False,
 ) -> None:
@@ -32,8 +38,10 @@ def map_(
     from cable.desk.scenario import read_scenario
     from cable.desk.terminal import mention_findings, say_written
 
-    if plane not in (None, "xy", "xz", "yz"):
-        raise DeskError(f"--plane: found {quoted(plane)}, expected xy, xz or yz; leave it out for the flattest")
+    if plane not in (None, "xy", "xz", "yz", "flat"):
+        raise DeskError(f"--plane: found {quoted(plane)}, expected xy, xz, yz or flat; or leave it out")
+    if branches and plane is not None:
+        raise DeskError("--branches: the diagram lies in no plane; take out --plane or --branches")
     read = read_scenario(scenario)
     names = list(read.model.part_names)
     words = [quantity] if quantity else ["share"] if input_ else ["mean", "sd"]
@@ -51,9 +59,11 @@ def map_(
     mention_findings(read)
     field = read.model.fluctuations(tolerance=tolerance)
 
+    from cable.desk.figures.branches import draw_branches
     from cable.desk.figures.map import draw_map
     from cable.desk.figures.style import save, styled
 
     with styled():
-        save(draw_map(field, chosen, plane, read.title), target, read.title)
+        drawn = draw_branches(field, chosen, read.title) if branches else draw_map(field, chosen, plane, read.title)
+        save(drawn, target, read.title)
     say_written(target.path)

@@ -14,11 +14,11 @@ from matplotlib.collections import LineCollection
 from matplotlib.colors import Normalize
 from matplotlib.figure import Figure
 from matplotlib.patches import Circle
-from matplotlib.patheffects import withStroke
 from numpy.typing import NDArray
 
-from cable.desk.figures.labels import Mark, place_names
-from cable.desk.figures.projection import PLANES, bounds, cut, flat_xy, flattest_plane
+from cable.desk.figures.labels import place_names
+from cable.desk.figures.marks import kind_marks, ring, site_marks
+from cable.desk.figures.projection import PLANES, TURNED, bounds, cut, flat_xy, flattest_plane
 from cable.desk.figures.style import (
     COLUMN_MM,
     GREY,
@@ -26,14 +26,14 @@ from cable.desk.figures.style import (
     PAGE_MM,
     PT_PER_MM,
     RASTER_ABOVE,
+    bar_label,
     colour_map,
     figure,
+    scale_of,
 )
 from cable.desk.messages import shown
 from cable.desk.quantities import Quantity
-from cable.desk.site_table import point_of_site
-from morphology import CellTree, kind_name
-from morphology.kinds import SOMA
+from morphology import CellTree
 
 if TYPE_CHECKING:
     from cable.noise.fluctuations import Fluctuations
@@ -94,7 +94,7 @@ def draw_map(
     """A map of the cell for each quantity; call it inside `styled`.
 
     Args:
-        plane: "xy", "xz" or "yz"; the flattest where not given.
+        plane: "xy", "xz" or "yz", the flattest of them where not given; or "flat", the flattest plane of all.
     """
     model = field.model
     chosen = plane or flattest_plane(model.tree)
@@ -112,10 +112,7 @@ def draw_map(
         axes.set_ylim(middle[1] - half[1] - foot, middle[1] + half[1] - foot)
         norm = _draw_cell(axes, model, chosen, quantity.values(field), plan.mm_per_um)
         page.colorbar(ScalarMappable(norm, colour_map()), cax=bar)
-        # above the bar, where no width of the numbers pushes it off the page
-        bar.set_title("\n".join(textwrap.wrap(shown(quantity.label, 60), 12)), fontsize=7.0, loc="left", pad=7.0)
-        bar.locator_params(nbins=6)
-        bar.spines["outline"].set_linewidth(0.5)
+        bar_label(bar, quantity.label)
         if i == 0:
             _scale_bar(axes, plan.mm_per_um)
         soma_pt = 2 * _sphere_radius_um(model.tree, model.tree.shape.soma) * plan.mm_per_um * PT_PER_MM
@@ -144,11 +141,7 @@ def _boxes(page: Figure, plan: Layout, number: int) -> tuple[Axes, Axes]:
 
 def _draw_cell(axes: Axes, model: CableModel, plane: str, values: Floats, mm_per_um: float) -> Normalize:
     tree = model.tree
-    defined = values[np.isfinite(values)]
-    lowest, highest = (float(defined.min()), float(defined.max())) if defined.size else (0.0, 1.0)
-    if highest - lowest < 1e-9 * max(abs(highest), 1e-300):
-        lowest, highest = lowest - 0.5, highest + 0.5  # one value everywhere: the middle of the scale
-    norm = Normalize(lowest, highest)
+    norm = scale_of(values)
     pieces = cut(tree, plane, values)
     cable = LineCollection(
         list(pieces.ends_um),
@@ -171,55 +164,20 @@ def _sphere_radius_um(tree: CellTree, row: int) -> float:
     return float(np.sqrt(tree.shape.sphere_area_um2[row] / (4 * np.pi)))
 
 
-def site_places(model: CableModel, plane: str) -> list[Mark]:
-    """The sites in the plane, µm."""
-    flat, tree = flat_xy(model.tree, plane), model.tree
-    marks = []
-    for name in model.site_names:
-        row = point_of_site(model, name)
-        if row is not None:
-            x, y = flat[row]
-        else:
-            place = model.site_places[name]
-            start, end = flat[tree.parent[place.row]], flat[place.row]
-            x, y = start + place.fraction * (end - start)
-        marks.append(Mark(name, float(x), float(y)))
-    return marks
-
-
 def _name_places(axes: Axes, model: CableModel, plane: str, foot_um: float, soma_is_mark: bool) -> None:
     """Rings and names for the sites, and the kinds of neurite named once each, at their farthest point.
 
     A soma drawn large enough is its own mark.
     """
-    sites = site_places(model, plane)
+    sites = site_marks(model, flat_xy(model.tree, plane))
     ringed = [m for m in sites if m.name != "soma" or not soma_is_mark]
-    axes.plot(
-        [m.x for m in ringed],
-        [m.y for m in ringed],
-        linestyle="none",
-        marker="o",
-        markersize=3.6,
-        markerfacecolor="none",
-        markeredgecolor=INK,
-        markeredgewidth=0.7,
-        path_effects=[withStroke(linewidth=1.8, foreground="white")],
-        zorder=10,
-    )
+    ring(axes, ringed)
     tree, flat = model.tree, flat_xy(model.tree, plane)
-    kinds = [k for k in np.unique(tree.shape.kind[tree.shape.length_um > 0]).tolist() if k != SOMA]
-    quiet = []
-    for kind in kinds[:6] if len(kinds) > 1 else []:
-        rows = np.flatnonzero((tree.shape.kind == kind) & (tree.shape.length_um > 0))
-        away = np.linalg.norm(flat[rows] - flat[tree.shape.soma], axis=1)
-        x, y = flat[rows[np.argmax(away)]]
-        word = kind_name(kind) if kind_name(kind) != str(kind) else f"kind {kind}"
-        quiet.append(Mark(word, float(x), float(y), quiet=True))
     (x0, x1), (y0, y1) = axes.get_xlim(), axes.get_ylim()
     turn = np.linspace(0, 2 * np.pi, 24, endpoint=False)
     soma_um = 0.9 * _sphere_radius_um(tree, tree.shape.soma)
     disc = flat[tree.shape.soma] + soma_um * np.column_stack([np.cos(turn), np.sin(turn)])
-    place_names(axes, [*sites, *quiet], np.vstack([flat, disc]), (x0, y0 + foot_um, x1, y1))
+    place_names(axes, [*sites, *kind_marks(tree, flat)], np.vstack([flat, disc]), (x0, y0 + foot_um, x1, y1))
 
 
 def round_length(longest_um: float) -> float:
@@ -237,9 +195,13 @@ def _scale_bar(axes: Axes, mm_per_um: float) -> None:
 
 
 def _caption(plane: str, mm_per_um: float) -> str:
-    right, up = ("xyz"[axis] for axis in PLANES[plane])
     least = THINNEST_PT / PT_PER_MM / mm_per_um
+    if plane == TURNED:
+        seen = "Turned so that the cell lies flattest"
+    else:
+        right, up = ("xyz"[axis] for axis in PLANES[plane])
+        seen = f"{right} to the right, {up} up"
     return (
-        f"{right} to the right, {up} up. Diameters to scale, but none thinner than {THINNEST_PT:g} pt "
+        f"{seen}. Diameters to scale, but none thinner than {THINNEST_PT:g} pt "
         f"({least:.2g} µm here). The soma is outlined."
     )

@@ -12,6 +12,7 @@ from morphology import CellTree
 
 Floats = NDArray[np.float64]
 PLANES = {"xy": (0, 1), "xz": (0, 2), "yz": (2, 1)}  # the axes that go right and up
+TURNED = "flat"  # the plane in which the cable lies flattest, however it is turned
 PIECES_ACROSS = 150  # a piece is at most the cell's size over this long: one piece has one colour
 
 
@@ -40,9 +41,29 @@ def flattest_plane(tree: CellTree) -> str:
     return next(name for name, axes in PLANES.items() if set(axes) == set(best))
 
 
+def directions(tree: CellTree, plane: str) -> Floats:
+    """(3, 3) unit vectors that point right, up and to the viewer, one a row.
+
+    In the plane "flat" the variance of the cable towards the viewer is least; y stays up as far as it can.
+    """
+    if plane != TURNED:
+        across, upward = PLANES[plane]
+        return np.eye(3)[[across, upward, ({0, 1, 2} - {across, upward}).pop()]]
+    parent, weight = np.maximum(tree.parent, 0), np.maximum(tree.edge_length_um, 1e-12)
+    middle = 0.5 * (tree.xyz_um + tree.xyz_um[parent])
+    apart = middle - np.average(middle, axis=0, weights=weight)
+    _, vectors = np.linalg.eigh((apart * weight[:, None]).T @ apart)
+    towards = vectors[:, 0]  # of the least variance
+    towards = towards * (-1.0 if towards[np.abs(towards).argmax()] < 0 else 1.0)
+    wished = np.array([0.0, 1.0, 0.0]) if abs(towards[1]) < 0.9 else np.array([0.0, 0.0, 1.0])
+    up = wished - (wished @ towards) * towards
+    up = up / np.linalg.norm(up)
+    return np.array([np.cross(up, towards), up, towards])
+
+
 def flat_xy(tree: CellTree, plane: str) -> Floats:
     """(N, 2) the points in the plane, µm."""
-    return np.ascontiguousarray(tree.xyz_um[:, PLANES[plane]])
+    return np.ascontiguousarray(tree.xyz_um @ directions(tree, plane)[:2].T)
 
 
 def bounds(tree: CellTree, plane: str) -> tuple[Floats, Floats]:
@@ -58,8 +79,7 @@ def cut(tree: CellTree, plane: str, values: Floats) -> Pieces:
     shape, flat = tree.shape, flat_xy(tree, plane)
     parent = np.maximum(tree.parent, 0)
     edges = np.flatnonzero((shape.far > shape.near) & (tree.parent >= 0))
-    depth_axis = ({0, 1, 2} - set(PLANES[plane])).pop()
-    edges = edges[np.argsort(tree.xyz_um[edges, depth_axis], kind="stable")]
+    edges = edges[np.argsort(tree.xyz_um[edges] @ directions(tree, plane)[2], kind="stable")]
     low, high = bounds(tree, plane)
     step = max(float((high - low).max()) / PIECES_ACROSS, 1e-9)
     across = np.linalg.norm(flat[edges] - flat[parent[edges]], axis=1)

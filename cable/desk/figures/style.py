@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+import textwrap
 import warnings
 from collections.abc import Iterator
 from contextlib import contextmanager
@@ -10,10 +11,13 @@ from functools import cache
 from typing import Any
 
 import matplotlib as mpl
+import numpy as np
+from matplotlib.axes import Axes
 from matplotlib.axis import Axis
-from matplotlib.colors import ListedColormap
+from matplotlib.colors import ListedColormap, Normalize
 from matplotlib.figure import Figure
 from matplotlib.ticker import FuncFormatter, LogLocator, NullFormatter
+from numpy.typing import NDArray
 
 from cable.desk.files import Output
 from cable.desk.messages import shown, version
@@ -76,9 +80,23 @@ def styled() -> Iterator[None]:
 @cache
 def colour_map() -> ListedColormap:
     """Perceptually uniform, safe for the colour-blind; its palest end, faint on paper, is left out."""
-    import numpy as np
-
     return ListedColormap(mpl.colormaps["viridis"](np.linspace(0.0, 0.92, 256)), name="viridis to 0.92")
+
+
+def scale_of(values: NDArray[np.float64]) -> Normalize:
+    """The range of colours for values (...), of which some may be undefined."""
+    defined = values[np.isfinite(values)]
+    lowest, highest = (float(defined.min()), float(defined.max())) if defined.size else (0.0, 1.0)
+    if highest - lowest < 1e-9 * max(abs(highest), 1e-300):
+        lowest, highest = lowest - 0.5, highest + 0.5  # one value everywhere: the middle of the scale
+    return Normalize(lowest, highest)
+
+
+def bar_label(bar: Axes, label: str) -> None:
+    """Name a colour bar above it, where no width of its numbers pushes the name off the page."""
+    bar.set_title("\n".join(textwrap.wrap(shown(label, 60), 12)), fontsize=7.0, loc="left", pad=7.0)
+    bar.locator_params(nbins=6)
+    bar.spines["outline"].set_linewidth(0.5)
 
 
 def figure(width_mm: float, height_mm: float) -> Figure:
