@@ -94,7 +94,7 @@ def scale_of(values: NDArray[np.float64]) -> Normalize:
 
 def bar_label(bar: Axes, label: str) -> None:
     """Name a colour bar above it, where no width of its numbers pushes the name off the page."""
-    bar.set_title("\n".join(textwrap.wrap(shown(label, 60), 12)), fontsize=7.0, loc="left", pad=7.0)
+    bar.set_title("\n".join(textwrap.wrap(shown(label, 60), 11)), fontsize=7.0, loc="left", pad=7.0)
     bar.locator_params(nbins=6)
     bar.spines["outline"].set_linewidth(0.5)
 
