@@ -176,8 +176,10 @@ def _name_places(axes: Axes, model: CableModel, plane: str, foot_um: float, soma
     (x0, x1), (y0, y1) = axes.get_xlim(), axes.get_ylim()
     turn = np.linspace(0, 2 * np.pi, 24, endpoint=False)
     soma_um = 0.9 * _sphere_radius_um(tree, tree.shape.soma)
-    disc = flat[tree.shape.soma] + soma_um * np.column_stack([np.cos(turn), np.sin(turn)])
-    place_names(axes, [*sites, *kind_marks(tree, flat)], np.vstack([flat, disc]), (x0, y0 + foot_um, x1, y1))
+    disc = soma_um * np.column_stack([np.cos(turn), np.sin(turn)])
+    soma = [flat[tree.shape.soma] + share * disc for share in (0.4, 0.7, 1.0)]
+    cable = cut(tree, plane, np.zeros(len(tree))).ends_um.mean(axis=1)
+    place_names(axes, [*sites, *kind_marks(tree, flat)], np.vstack([flat, cable, *soma]), (x0, y0 + foot_um, x1, y1))
 
 
 def round_length(longest_um: float) -> float:

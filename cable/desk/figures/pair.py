@@ -25,7 +25,8 @@ def draw_pair(pair: Pair, title: str = "") -> Figure:
     upper.axvline(0.0, color=PALE, linewidth=0.6)
     upper.axhline(0.0, color=PALE, linewidth=0.6)
     upper.plot(pair.lag_ms, pair.covariance_mV2, color=INK, linewidth=1.6, label="all inputs")
-    for k, (name, part) in enumerate(pair.covariance_by_input_mV2.items()):
+    parts = pair.covariance_by_input_mV2 if len(pair.covariance_by_input_mV2) > 1 else {}
+    for k, (name, part) in enumerate(parts.items()):
         line = DASHES[(k + 1) % len(DASHES)]
         upper.plot(pair.lag_ms, part, color=GREY, linewidth=0.9, linestyle=line, label=shown(name, 22))
     upper.set_xlim(pair.lag_ms[0], pair.lag_ms[-1])

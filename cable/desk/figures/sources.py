@@ -48,11 +48,11 @@ def draw_sources(sources: Sources, title: str = "") -> Figure:
     if np.isfinite(half):
         axes.axvline(half, color=GREY, linewidth=0.8, linestyle=(0, (4, 3)))
         text = f"half within {half:.0f} µm"
-        axes.annotate(text, (half, top.max()), (4, 1), textcoords="offset points", fontsize=6.5, color=GREY)
+        axes.annotate(text, (half, top.max()), (4, 5), textcoords="offset points", fontsize=6.5, color=GREY)
     if foot.any():
         axes.axhline(0.0, color=INK, linewidth=0.6)
     axes.set_xlim(0.0, edges[-1])
-    axes.set_ylim(1.12 * float(foot.min()), float(top.max()) * 1.12 or 1.0)
+    axes.set_ylim(1.12 * float(foot.min()), float(top.max()) * 1.25 or 1.0)  # room for the words
     axes.set_xlabel(f"distance from {shown(sources.site, 40)} along the tree (µm)")
     axes.set_ylabel(f"% of the variance per {edges[1]:.3g} µm")
     if sources.variance_by_input_mV2:

@@ -24,7 +24,8 @@ def draw_spectrum(spectrum: Spectrum, title: str = "", temperature_C: float | No
     lower = page.add_axes((LEFT, 0.12, 0.97 - LEFT, 0.27), sharex=upper)
     f = spectrum.frequency_Hz
     upper.loglog(f, spectrum.psd_mV2_per_Hz, color=INK, linewidth=1.6, label="all inputs")
-    for k, (name, part) in enumerate(spectrum.psd_by_input_mV2_per_Hz.items()):
+    parts = spectrum.psd_by_input_mV2_per_Hz if len(spectrum.psd_by_input_mV2_per_Hz) > 1 else {}
+    for k, (name, part) in enumerate(parts.items()):
         upper.loglog(f, part, color=GREY, linewidth=0.9, linestyle=DASHES[(k + 1) % len(DASHES)], label=shown(name, 30))
     if temperature_C is not None:
         label = f"thermal, {temperature_C:g} °C".replace("-", "−")
