@@ -9,7 +9,7 @@ import numpy as np
 from morphology.findings import Finding, excerpt, listed, rows_by_kind, subject
 from morphology.kinds import AXON, kind_name
 from morphology.structure import MISSING, Ints, Mask, cycle_through, endless
-from morphology.table import LARGEST_UM, SwcTable
+from morphology.table import LARGEST_UM, SMALLEST_UM, SwcTable
 
 NEIGHBOURS = '"radius from neighbours"'
 
@@ -157,7 +157,7 @@ def _finite(table: SwcTable) -> Mask:
 
 
 def _zero_radius(table: SwcTable) -> Finding | None:
-    rows = np.flatnonzero(table.radius_um == 0)
+    rows = np.flatnonzero((table.radius_um > -SMALLEST_UM) & (table.radius_um < SMALLEST_UM))
     if not rows.size:
         return None
     message = f"{rows_by_kind(table.kinds[rows])} of radius 0 {table.named(rows)}"
@@ -165,7 +165,7 @@ def _zero_radius(table: SwcTable) -> Finding | None:
 
 
 def _negative_radius(table: SwcTable) -> Finding | None:
-    rows = np.flatnonzero(np.isfinite(table.radius_um) & (table.radius_um < 0))
+    rows = np.flatnonzero(np.isfinite(table.radius_um) & (table.radius_um <= -SMALLEST_UM))
     if not rows.size:
         return None
     message = f"{rows_by_kind(table.kinds[rows])} of negative radius {table.named(rows)}"

@@ -16,6 +16,7 @@ import numpy as np
 
 from morphology.findings import Finding, SwcError, rows_by_kind, subject, verb
 from morphology.kinds import KIND_NAMES, kind_code, kind_name
+from morphology.reading import bytes_of
 from morphology.structure import has_ancestor, parents_first
 from morphology.swc_text import decode, parse
 from morphology.table import SwcTable
@@ -50,7 +51,7 @@ def read_swc(source: str | PathLike[str] | bytes, name: str | None = None) -> Sw
     path = Path(source)
     called = name or path.name
     try:
-        data = path.read_bytes()
+        data = bytes_of(path, pipes=True)
     except (OSError, ValueError) as error:
         reason = getattr(error, "strerror", None) or str(error)
         finding = Finding(

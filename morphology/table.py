@@ -21,6 +21,7 @@ from morphology.structure import (
 )
 
 LARGEST_UM = 1e12  # beyond this a number is taken for infinite: squares must not overflow
+SMALLEST_UM = 1e-9  # a radius below this, far below an atom's, is taken for 0: its inverse must not overflow
 
 
 @dataclass(frozen=True, eq=False)
@@ -108,7 +109,7 @@ class SwcTable:
     @cached_property
     def readable_radius(self) -> Mask:
         """(N,) whether the radius is one: positive and finite."""
-        return (self.radius_um > 0) & (self.radius_um < LARGEST_UM)
+        return (self.radius_um >= SMALLEST_UM) & (self.radius_um < LARGEST_UM)
 
     def named(self, rows: Ints) -> str:
         """The ids of some rows in brackets, the first few if there are many."""

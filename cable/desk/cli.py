@@ -3,7 +3,10 @@ only when it runs: the help must answer at once."""
 
 from __future__ import annotations
 
+import logging
+import os
 import signal
+import sys
 from typing import Annotated
 
 import typer
@@ -21,6 +24,9 @@ from cable.desk.commands.spectrum import spectrum
 from cable.desk.commands.start import start
 from cable.desk.commands.table import table
 from cable.desk.messages import version
+from cable.desk.terminal import USER_ERROR, give_up_stdout, prepare_streams, say, unwritable
+
+STOPPING = [getattr(signal, name) for name in ("SIGTERM", "SIGHUP") if hasattr(signal, name)]
 
 app = typer.Typer(
     name="cablenoise",
@@ -69,5 +75,16 @@ def _stop(number: int, frame: object) -> None:
 
 def main() -> None:
     """Entry point of the command; a polite kill is treated as Ctrl-C, so that no half file stays."""
-    signal.signal(signal.SIGTERM, _stop)
-    app()
+    for number in STOPPING:
+        if signal.getsignal(number) is not signal.SIG_IGN:  # as under nohup
+            signal.signal(number, _stop)
+    prepare_streams()
+    # figures go into files alone: a backend that was set for other programs may be missing here
+    os.environ["MPLBACKEND"] = "agg"
+    logging.getLogger("matplotlib").setLevel(logging.ERROR)  # a folder for its cache is no business of the user's
+    try:
+        app()
+    except OSError as error:  # of the help or the version; commands see to their own
+        give_up_stdout()
+        say(unwritable(error))
+        sys.exit(USER_ERROR)

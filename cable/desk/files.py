@@ -118,10 +118,16 @@ def _clear_errors(path: Path) -> Iterator[None]:
             errno.EDQUOT: "the disk quota is used up; nothing was kept",
             errno.EACCES: "permission denied; choose another folder",
             errno.EROFS: "the folder is read-only; choose another",
+            errno.EFBIG: "the file would be larger than is allowed here; nothing was kept",
+            errno.ELOOP: "the name is a link that leads to itself; choose another",
             errno.ENAMETOOLONG: "the name is too long; choose a shorter one",
         }
         reason = reasons.get(error.errno or 0, error.strerror or str(error))
         raise DeskError(f"{shown(path)}: cannot be written: {reason}") from None
+    except RuntimeError as error:  # how Python up to 3.12 tells of links in a circle
+        if "loop" not in str(error):
+            raise
+        raise DeskError(f"{shown(path)}: cannot be written: the name is a link that leads to itself") from None
     except ValueError as error:
         if "null" not in str(error):
             raise

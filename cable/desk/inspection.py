@@ -7,7 +7,7 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
 
 from cable.desk.messages import shown
-from cable.desk.terminal import console
+from cable.desk.terminal import console, print_whole
 from morphology import Finding, SwcError
 from morphology.measures import Measures, measure
 from morphology.swc import build_tree, read_swc
@@ -61,7 +61,7 @@ def print_inspection(result: Inspection) -> None:
     if result.findings:
         out.print(_findings_table(result.findings))
     if result.measures is not None:
-        out.print(_measures_table(result.measures))
+        print_whole(out, _measures_table(result.measures))
         out.print(f"soma rule: {shown(result.measures.soma_rule)}")
     counts = {s: sum(f.severity == s for f in result.findings) for s in ("error", "warning", "note")}
     tally = ", ".join(f"{n} {word}{'' if n == 1 else 's'}" for word, n in counts.items() if n) or "nothing odd"

@@ -20,6 +20,7 @@ from cable.desk.synapse_list import read_lists
 from cable.noise.model import CableModel, ModelError
 from cable.theory.synapse import Placed
 from morphology import CellTree, Finding, PlaceError, Site, SwcError, Zone, kind_name
+from morphology.reading import bytes_of
 from morphology.swc import build_tree, read_swc
 
 
@@ -34,6 +35,7 @@ class Scenario:
         findings: what was odd about the reconstruction (no errors among them).
         sha256: of the bytes of the TOML file followed by those of the SWC file and of the lists of synapses.
         list_paths: the lists of synapses it names.
+        text: the TOML file as text.
     """
 
     path: Path
@@ -42,6 +44,7 @@ class Scenario:
     findings: tuple[Finding, ...]
     sha256: str
     list_paths: tuple[Path, ...] = ()
+    text: str = ""
 
     @property
     def files(self) -> tuple[Path, ...]:
@@ -105,12 +108,12 @@ def read_scenario(path: str | PathLike[str]) -> Scenario:
     read = [listed for listed in lists if listed]
     sha256 = hashlib.sha256(b"".join([raw, swc, *(listed.data for listed in read)])).hexdigest()
     list_paths = tuple(listed.path for listed in read)
-    return Scenario(Path(path), morphology_path, model, findings, sha256, list_paths)
+    return Scenario(Path(path), morphology_path, model, findings, sha256, list_paths, raw.decode("utf-8-sig"))
 
 
 def _bytes_of(path: str | PathLike[str]) -> bytes:
     try:
-        return Path(path).read_bytes()
+        return bytes_of(path, pipes=True)
     except (OSError, ValueError) as error:
         reason = getattr(error, "strerror", None) or "not the name of a file"
         message = f"cannot be opened ({reason}); check the path, or begin with: cablenoise start FOLDER"
@@ -181,7 +184,7 @@ def _read_cell(document: Document, path: Path, file: str) -> tuple[bytes, CellTr
     """The SWC file's bytes, its tree and the findings."""
     cell = document.cell
     try:
-        data = path.read_bytes()
+        data = bytes_of(path)
     except (OSError, ValueError) as error:
         reason = getattr(error, "strerror", None) or "not the name of a file"
         message = (

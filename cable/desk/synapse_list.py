@@ -14,6 +14,7 @@ from cable.desk.problems import Problem, ScenarioError
 from cable.desk.schema import Document
 from cable.theory.synapse import Placed
 from morphology import CellTree, Site
+from morphology.reading import bytes_of
 
 COLUMNS = ("swc_id", "fraction", "number")
 
@@ -58,7 +59,7 @@ def read_lists(document: Document, folder: Path, tree: CellTree, file: str) -> l
             continue
         path = folder / entry.synapses
         try:
-            data = path.read_bytes()
+            data = bytes_of(path)
         except (OSError, ValueError) as error:
             reason = getattr(error, "strerror", None) or "not the name of a file"
             message = (

@@ -7,7 +7,7 @@ from collections.abc import Iterable, Sequence
 
 from cable.desk.messages import shown
 from cable.desk.tables import Table
-from cable.desk.terminal import console
+from cable.desk.terminal import console, print_whole
 
 TITLES = {
     "site": "site",
@@ -17,6 +17,8 @@ TITLES = {
     "path_um": "path\nµm",
     "mean_mV": "mean\nmV",
     "sd_mV": "SD\nmV",
+    "mean_next_mV": "next order\nmean, mV",
+    "sd_next_mV": "next order\nSD, mV",
     "correlation_time_ms": "corr. time\nms",
     "input_resistance_MOhm": "input res.\nMΩ",
     "upcrossing_Hz": "upcrossing\nHz",
@@ -26,6 +28,8 @@ DECIMALS = {
     "path_um": 1,
     "mean_mV": 2,
     "sd_mV": 3,
+    "mean_next_mV": 2,
+    "sd_next_mV": 3,
     "correlation_time_ms": 2,
     "input_resistance_MOhm": 1,
 }
@@ -55,7 +59,7 @@ def print_table(table: Table, inputs: Sequence[str], sentences: Iterable[str], t
         grid.add_row(*(Text(cell) for cell in row))
     if title:
         out.print(Text(shown(title), style="bold"))
-    out.print(grid)
+    print_whole(out, grid)
     for sentence in sentences:
         out.print(shown(sentence, 1000))
 
@@ -91,4 +95,4 @@ def print_matrix(names: Sequence[str], matrix: Sequence[Sequence[float]], title:
         grid.add_row(Text(shown(name, 60)), *(f"{value:.4f}" if value == value else "" for value in row))
     if title:
         console().print(Text(shown(title), style="bold"))
-    console().print(grid)
+    print_whole(console(), grid)

@@ -14,6 +14,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 from numpy.typing import NDArray
 
+from cable.network.quadrature import NotConverged
 from cable.noise.operating_point import OperatingPoint, operating_point
 from cable.noise.population import total_spectrum
 
@@ -25,7 +26,7 @@ TARGET = 1e-6  # of the variance at any point
 LOCAL = 2e-6  # of a piece's own effect, which is a small part of the whole
 ALLOWANCE = 4 / 3  # on the measured difference; 16/15 for a clean fourth power
 PROBE_STEP, PROBES = 2.6, 2  # probes at ω = 0 and ω₀ sinh(2.6): a crude variance, for comparison only
-MAX_PIECES = 2_000_000
+MOST_PIECES, MOST_PER_STRETCH = 15_000, 4  # beyond both, division is given up: no cell, but a wrong unit needs more
 
 
 @dataclass(frozen=True, eq=False)
@@ -37,7 +38,11 @@ class Refined:
 
 
 def refine(model: CableModel) -> Refined:
-    """Divide until means and a crude variance have converged to `TARGET` at every point."""
+    """Divide until means and a crude variance have converged to `TARGET` at every point.
+
+    Raises:
+        NotConverged: cylinders so long for their radius, or tapering so steeply, that it would take too many pieces.
+    """
     point = operating_point(model)
     uneven = np.zeros(point.layout.segments, dtype=bool)
     uneven[point.layout.segment[point.needs_division()]] = True
@@ -47,14 +52,30 @@ def refine(model: CableModel) -> Refined:
     np.maximum.at(lost, point.layout.segment, point.unevenness(4 * point.network.slowest_rate_per_ms))
     local = LOCAL
     while True:
-        divide = np.where(uneven, np.maximum(1, np.ceil((lost / local) ** 0.25)), 1).astype(np.int64)
+        wanted = np.where(uneven, np.maximum(1, np.ceil((lost / local) ** 0.25)), 1.0)
+        _check_number(wanted, point)
+        divide = wanted.astype(np.int64)
         if (divide > 1).any():
             point = operating_point(model, divide)
         finer = operating_point(model, np.where(uneven, 2 * divide, divide))
         error = ALLOWANCE * _difference(point, finer)
-        if error <= TARGET or finer.layout.row.size > MAX_PIECES:
+        if error <= TARGET:
             return Refined(point, error)
         local *= min(0.5 * TARGET / error, 0.25)
+
+
+def _check_number(wanted: Floats, point: OperatingPoint) -> None:
+    """Raise NotConverged where the wanted divisions of stretches are too many to be made."""
+    if wanted.sum() <= max(MOST_PIECES, MOST_PER_STRETCH * len(wanted)):
+        return
+    layout, tree = point.layout, point.layout.tree
+    worst = layout.row[layout.segment == int(np.argmax(wanted))][0]
+    raise NotConverged(
+        f"the cylinder that ends at SWC id {tree.ids[worst]} ({tree.edge_length_um[worst]:.3g} µm long, radius "
+        f"{tree.radius_um[tree.parent[worst]]:.3g} to {tree.radius_um[worst]:.3g} µm) would have to be divided into "
+        f"{wanted.max():.2g} pieces for an exact answer, {wanted.sum():.2g} in the whole cell; check the unit of "
+        "positions and radii (µm) and the membrane's values"
+    )
 
 
 def _difference(coarse: OperatingPoint, fine: OperatingPoint) -> float:

@@ -23,6 +23,9 @@ from cable.theory.spelling import LATEX, PLAIN, Term, spelled
 if TYPE_CHECKING:
     import sympy
 
+Floats = NDArray[np.float64]
+SAMPLES_A_CYCLE = 24  # of a kernel that rings, in search of its peak
+
 
 @dataclass(frozen=True)
 class Kernel:
@@ -178,9 +181,16 @@ def peak_of(value: Callable[..., NDArray[np.float64]], poles_per_ms: tuple[compl
 
     slow = min(complex(p).real for p in poles_per_ms)
     fast = max(abs(p) for p in poles_per_ms)
-    times = np.r_[0.0, np.geomspace(1e-3 / fast, 60.0 / slow, 4001)]
+    last = 60.0 / slow
+    times = np.r_[0.0, np.geomspace(1e-3 / fast, last, 4001)]
+    rings = max(abs(complex(p).imag) for p in poles_per_ms)
+    if rings > 0:
+        cycles = math.ceil(rings * last / (2 * math.pi))
+        times = np.unique(np.r_[times, np.linspace(0.0, last, SAMPLES_A_CYCLE * cycles + 1)])
     heights = np.abs(value(times))
     best = int(np.argmax(heights))
+    if rings > 0:
+        best = _highest_cycle(value, times, heights)
     if best == 0:
         return 0.0, float(value(0.0))
     low, high = times[best - 1], times[min(best + 1, len(times) - 1)]
@@ -188,3 +198,20 @@ def peak_of(value: Callable[..., NDArray[np.float64]], poles_per_ms: tuple[compl
         lambda t: -abs(float(value(t))), bounds=(low, high), method="bounded", options={"xatol": 1e-12 * high}
     )
     return float(found.x), float(value(found.x))
+
+
+def _highest_cycle(value: Callable[..., NDArray[np.float64]], times: Floats, heights: Floats) -> int:
+    """The sample beside the highest peak, which need not be the highest sample: cycles are met at different phases."""
+    near = np.flatnonzero(heights[1:-1] > 0.9 * heights.max()) + 1
+    near = near[(heights[near] >= heights[near - 1]) & (heights[near] >= heights[near + 1])]
+    if not near.size:
+        return int(np.argmax(heights))
+    inside = np.linspace(0.0, 1.0, 33)
+    low, high = times[near - 1], times[near + 1]
+    fine = np.abs(value(low[:, None] + (high - low)[:, None] * inside))
+    top = np.clip(fine.argmax(axis=1), 1, len(inside) - 2)
+    left, middle, right = (np.take_along_axis(fine, (top + k)[:, None], axis=1)[:, 0] for k in (-1, 0, 1))
+    bend = 2 * middle - left - right
+    peaks = middle + np.divide((right - left) ** 2, 8 * bend, out=np.zeros_like(bend), where=bend > 0)  # of a parabola
+    best = int(np.argmax(peaks))
+    return int(near[best]) if peaks[best] > heights[0] else 0

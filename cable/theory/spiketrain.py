@@ -14,6 +14,8 @@ from numpy.typing import NDArray
 from cable.theory.membrane import check_positive
 from cable.theory.units import PER_MS_PER_HZ
 
+LARGEST_SHARE = 0.996  # of the mean interval that a dead time may take up: e^{hazard·dead time} must not overflow
+
 
 @dataclass(frozen=True)
 class SpikeTrain:
@@ -58,7 +60,13 @@ class SpikeTrain:
 
     def check_rate(self, rate_Hz: float) -> None:
         """Raise ValueError where the dead time leaves no room for the rate."""
-        if rate_Hz * PER_MS_PER_HZ * self.dead_time_ms >= 1:
+        share = rate_Hz * PER_MS_PER_HZ * self.dead_time_ms
+        if LARGEST_SHARE < share < 1:
+            raise ValueError(
+                f"dead_time_ms = {self.dead_time_ms:g} leaves almost no chance at {rate_Hz:g} Hz, expected at most "
+                f"{100 * LARGEST_SHARE:g} % of the mean interval; use a shorter dead time"
+            )
+        if share >= 1:
             raise ValueError(
                 f"dead_time_ms = {self.dead_time_ms:g} allows rates below {1e3 / self.dead_time_ms:g} Hz, "
                 f"found {rate_Hz:g} Hz"

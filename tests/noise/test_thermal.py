@@ -10,11 +10,11 @@ import math
 import numpy as np
 import pytest
 from numpy.testing import assert_allclose
-from tolerances import EXACT, TYPED
 
 from cable import CableModel, Membrane, SynapticInput
 from cable.theory.units import BOLTZMANN_J_PER_K, KELVIN_AT_0_C
 from morphology import CellTree, Site, Zone
+from tolerances import EXACT, TYPED
 
 PLAIN = Membrane(axial_resistivity_ohm_cm=150.0, capacitance_uF_cm2=1.0, resistance_ohm_cm2=20000.0, rest_mV=-70.0)
 BODY_C = 37.0

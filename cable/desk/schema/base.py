@@ -10,8 +10,23 @@ from cable.desk.messages import did_you_mean, quoted
 from morphology import KIND_NAMES, kind_code
 from morphology.repair import REPAIRS
 
-Positive = Annotated[float, Field(gt=0)]
-NotNegative = Annotated[float, Field(ge=0)]
+SMALLEST, LARGEST = (
+    1e-15,
+    1e15,
+)  # no quantity in the trade's units comes near; products of a few stay in double precision
+
+
+def _bearable(value: float) -> float:
+    if value != 0 and not SMALLEST <= abs(value) <= LARGEST:
+        raise ValueError(
+            f"found {value:g}, expected a size between {SMALLEST:g} and {LARGEST:g}; the key says its unit, correct it"
+        )
+    return value
+
+
+Number = Annotated[float, AfterValidator(_bearable)]
+Positive = Annotated[float, Field(gt=0), AfterValidator(_bearable)]
+NotNegative = Annotated[float, Field(ge=0), AfterValidator(_bearable)]
 
 
 def _known_kind(kind: object) -> object:

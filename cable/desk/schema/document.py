@@ -10,7 +10,7 @@ from typing import Self
 from pydantic import Field, model_validator
 
 from cable.desk.messages import choices
-from cable.desk.schema.base import Kind, Name, Positive, Repair, Section
+from cable.desk.schema.base import Kind, Name, Number, Positive, Repair, Section
 from cable.desk.schema.electrodes import ElectrodeSection
 from cable.desk.schema.inputs import InputSection
 from cable.desk.schema.places import AtSection, ZoneSection
@@ -40,7 +40,7 @@ class MembraneZoneSection(Section):
     axial_resistivity_ohm_cm: Positive | None = Field(default=None, description="axial resistivity, Ω cm")
     capacitance_uF_cm2: Positive | None = Field(default=None, description="specific capacitance, µF/cm²")
     resistance_ohm_cm2: Positive | None = Field(default=None, description="specific membrane resistance, Ω cm²")
-    rest_mV: float | None = Field(default=None, description="resting potential, mV")
+    rest_mV: Number | None = Field(default=None, description="resting potential, mV")
     spine_factor: Positive | None = Field(default=None, description="membrane area per bare area")
 
     @model_validator(mode="after")
@@ -60,7 +60,7 @@ class MembraneSection(Section):
     axial_resistivity_ohm_cm: Positive = Field(description="axial resistivity, Ω cm")
     capacitance_uF_cm2: Positive = Field(description="specific capacitance, µF/cm²")
     resistance_ohm_cm2: Positive = Field(description="specific membrane resistance, Ω cm²")
-    rest_mV: float = Field(description="resting potential, mV")
+    rest_mV: Number = Field(description="resting potential, mV")
     spine_factor: Positive = Field(default=1.0, description="membrane area per bare area")
     zone: list[MembraneZoneSection] = Field(default=[], description="sections [[membrane.zone]]")
 
@@ -80,7 +80,7 @@ class SiteSection(Section):
 class Threshold(Section):
     """[threshold]"""
 
-    level_mV: float = Field(description="the level that counts as near a spike, mV")
+    level_mV: Number = Field(description="the level that counts as near a spike, mV")
 
 
 class Document(Section):

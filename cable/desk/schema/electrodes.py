@@ -6,7 +6,7 @@ from typing import Annotated, Any, Literal, Self
 
 from pydantic import BeforeValidator, Field, model_validator
 
-from cable.desk.schema.base import Name, NotNegative, Positive, Section, spoken
+from cable.desk.schema.base import Name, NotNegative, Number, Positive, Section, spoken
 from cable.theory.electrode import CURRENT_CLAMP, ONLY_IN, Electrode
 from cable.theory.filters import MAX_CORNER_HZ, MAX_ORDER, LowPass
 
@@ -45,7 +45,7 @@ class ElectrodeSection(Section):
         default=None, description="share of the series resistance that the bridge takes off"
     )
     compensation: Share | None = Field(default=None, description="share of the series resistance compensated")
-    holding_mV: float | None = Field(default=None, description="the potential that is held, mV")
+    holding_mV: Number | None = Field(default=None, description="the potential that is held, mV")
     filter: FilterSection | None = Field(
         default=None, description='such as { family = "bessel", order = 4, corner_Hz = 3000 }'
     )

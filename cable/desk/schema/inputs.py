@@ -7,7 +7,7 @@ from typing import Annotated, Any, Literal, Self
 from pydantic import BeforeValidator, Field, model_validator
 
 from cable.desk.messages import choices
-from cable.desk.schema.base import Name, NotNegative, Positive, Section, spoken
+from cable.desk.schema.base import Name, NotNegative, Number, Positive, Section, spoken
 from cable.desk.schema.places import PlacedSection, ZoneSection
 from cable.theory.kernel import Kernel
 from cable.theory.sharing import Shared
@@ -112,9 +112,9 @@ class InputSection(Section):
     )
     rate_Hz: NotNegative = Field(description="rate of one synapse, Hz")
     conductance_nS: Positive | None = Field(default=None, description="peak conductance of one event, nS")
-    reversal_mV: float | None = Field(default=None, description="reversal potential, mV")
-    current_pA: float | None = Field(default=None, description="peak current of one event, pA")
-    charge_fC: float | None = Field(default=None, description="charge of one event, fC")
+    reversal_mV: Number | None = Field(default=None, description="reversal potential, mV")
+    current_pA: Number | None = Field(default=None, description="peak current of one event, pA")
+    charge_fC: Number | None = Field(default=None, description="charge of one event, fC")
     size_cv: NotNegative = Field(default=0.0, description="coefficient of variation of the size of an event")
     kernel: KernelSection | None = Field(default=None, description="such as { rise_ms = 0.2, decay_ms = 2.0 }")
     correlation: float = Field(default=0.0, ge=0, le=1, description="pairwise correlation within the population")
