@@ -13,6 +13,7 @@ from cable.desk.tables import Table
 
 if TYPE_CHECKING:
     from cable.noise.model import CableModel
+    from cable.noise.next_pair import NextPair
     from cable.noise.pairs import Pair
 
 LAGS, FREQUENCIES = 401, 61
@@ -28,9 +29,10 @@ def study_pair(model: CableModel, a: str, b: str, lag_ms: float | None, toleranc
     )
 
 
-def pair_table(pair: Pair) -> Table:
-    """One row per lag: covariance in all and by input."""
+def pair_table(pair: Pair, after: NextPair | None = None) -> Table:
+    """One row per lag: covariance in all, to the next order where it is given, and by input."""
     columns = {"lag_ms": pair.lag_ms, "covariance_mV2": pair.covariance_mV2}
+    columns |= {"covariance_next_mV2": after.covariance_mV2} if after else {}
     columns |= {f"covariance_{name}_mV2": part for name, part in pair.covariance_by_input_mV2.items()}
     return Table(columns)
 

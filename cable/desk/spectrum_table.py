@@ -6,6 +6,7 @@ import math
 from typing import TYPE_CHECKING
 
 import numpy as np
+from numpy.typing import NDArray
 
 from cable.desk.messages import shown
 from cable.desk.tables import Table
@@ -14,10 +15,16 @@ if TYPE_CHECKING:
     from cable.noise.spectra import Spectrum
 
 
-def spectrum_table(spectrum: Spectrum, temperature_C: float | None = None) -> Table:
-    """One row per frequency: density in all and by input, impedance as size and phase; thermal noise if asked for."""
+def spectrum_table(
+    spectrum: Spectrum, temperature_C: float | None = None, after: NDArray[np.float64] | None = None
+) -> Table:
+    """One row per frequency: density in all and by input, impedance as size and phase.
+
+    Thermal noise and the density to the next order, `after` (F,), are there if they are given.
+    """
     z = spectrum.input_impedance_MOhm
     columns = {"frequency_Hz": spectrum.frequency_Hz, "psd_mV2_per_Hz": spectrum.psd_mV2_per_Hz}
+    columns |= {"psd_next_mV2_per_Hz": after} if after is not None else {}
     columns |= {f"psd_{name}_mV2_per_Hz": part for name, part in spectrum.psd_by_input_mV2_per_Hz.items()}
     columns |= {"input_impedance_MOhm": np.abs(z), "input_phase_rad": np.angle(z)}
     if spectrum.transfer_impedance_MOhm is not None:

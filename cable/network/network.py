@@ -70,8 +70,13 @@ class Network:
         nodes[1:] += far
         return nodes
 
-    def at(self, omega_per_ms: Floats) -> Response:
-        """The network eliminated at the angular frequencies ω (F,), rad/ms."""
+    def at(self, omega_per_ms: Floats, added_nS: tuple[Complexes, Complexes] | None = None) -> Response:
+        """The network eliminated at the angular frequencies ω (F,), rad/ms.
+
+        Args:
+            omega_per_ms: (F,) angular frequencies.
+            added_nS: (E, F) and (E + 1, F) admittances to add to the membrane of pieces and at nodes.
+        """
         omega = np.asarray(omega_per_ms, dtype=float)
         shape = len(self.resistance_GOhm), len(omega)
         near, far, coupling, share = (np.empty(shape, dtype=np.complex128) for _ in range(4))
@@ -79,7 +84,8 @@ class Network:
         for start in range(0, shape[0], ROWS):
             rows = slice(start, start + ROWS)
             resistance = self.resistance_GOhm[rows, None]
-            x2 = resistance * (self.conductance_nS[rows, None] + 1j * omega * self.capacitance_pF[rows, None])
+            membrane = self.conductance_nS[rows, None] + 1j * omega * self.capacitance_pF[rows, None]
+            x2 = resistance * (membrane if added_nS is None else membrane + added_nS[0][rows])
             form = cylinder_form(x2)
             coupling[rows] = form.coupling / resistance
             even = form.shunt / resistance
@@ -89,6 +95,8 @@ class Network:
             share[rows] = form.shunt / x2
         shunt = self.to_nodes(near, far)
         shunt += self.node_conductance_nS[:, None] + 1j * omega * self.node_capacitance_pF[:, None]
+        if added_nS is not None:
+            shunt += added_nS[1]
         for load in self.loads:
             shunt[load.node] += load.admittance_nS(1j * omega)
         factors = eliminate(self.plan, shunt, coupling)
@@ -96,23 +104,44 @@ class Network:
 
     def columns_at(self, s_per_ms: NDArray[np.complexfloating], nodes: list[int]) -> Columns:
         """Transfer impedances from a few nodes to all, at complex Laplace frequencies s (F,), 1/ms."""
-        s = np.asarray(s_per_ms, dtype=complex)
+        x2, share, factors = self._eliminated_at(s_per_ms)
+        impedance = []
+        for node in nodes:
+            unit = np.zeros(factors.inverse.shape, dtype=np.complex128)
+            unit[node] = 1.0
+            impedance.append(solve(factors, unit))
+        return Columns(x2, share, np.array(impedance))
+
+    def input_impedance_at(
+        self, s_per_ms: NDArray[np.complexfloating], added_nS: tuple[Complexes, Complexes] | None = None
+    ) -> Complexes:
+        """(E + 1, F) input impedance of each node, GΩ, at complex Laplace frequencies s (F,), 1/ms.
+
+        Args:
+            s_per_ms: (F,) frequencies.
+            added_nS: as in `at`.
+        """
+        return impedances(self._eliminated_at(s_per_ms, added_nS)[2]).point[self.plan.node]
+
+    def _eliminated_at(
+        self, s_per_ms: NDArray[np.complexfloating], added_nS: tuple[Complexes, Complexes] | None = None
+    ) -> tuple[Complexes, Complexes, Factors]:
+        s = np.asarray(s_per_ms, dtype=np.complex128)
         axial = self.resistance_GOhm[:, None]
-        x2 = (axial * (self.conductance_nS[:, None] + s * self.capacitance_pF[:, None])).astype(complex, copy=False)
+        membrane: Complexes = self.conductance_nS[:, None] + s * self.capacitance_pF[:, None]
+        if added_nS is not None:
+            membrane = membrane + added_nS[0]
+        x2 = (axial * membrane).astype(complex, copy=False)
         form = cylinder_form(x2)
         even = form.shunt / axial
         uneven = even * (2 * self.lean[:, None]) + self.tilt_nS[:, None]
         shunt = self.to_nodes(even - uneven, even + uneven)
         shunt += self.node_conductance_nS[:, None] + s * self.node_capacitance_pF[:, None]
+        if added_nS is not None:
+            shunt += added_nS[1]
         for load in self.loads:
             shunt[load.node] += load.admittance_nS(s)
-        factors = eliminate(self.plan, shunt, form.coupling / axial)
-        impedance = []
-        for node in nodes:
-            unit = np.zeros(shunt.shape, dtype=np.complex128)
-            unit[node] = 1.0
-            impedance.append(solve(factors, unit))
-        return Columns(x2, form.shunt / x2, np.array(impedance))
+        return x2, form.shunt / x2, eliminate(self.plan, shunt, form.coupling / axial)
 
     @cached_property
     def slowest_rate_per_ms(self) -> float:

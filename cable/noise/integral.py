@@ -85,7 +85,7 @@ def integrate_spectra(
         omega0,
         tolerance,
         range_u(point, power, derivative, tolerance, omega0),
-        _cell_strip(point, omega0) / 2,  # sinc interpolation errs by the root of the trapezoidal rule's error
+        cell_strip(point, omega0) / 2,  # sinc interpolation errs by the root of the trapezoidal rule's error
         adapted=lambda step: partial(spectra, smoothed(step)),
         block=block_for(point),
     )
@@ -101,7 +101,7 @@ def _trains_ring(point: OperatingPoint) -> bool:
     """Whether spike trains are so regular that smoothing them for the nodes saves frequencies."""
     omega0 = slowest_rate_per_ms(point)
     dead = any(one.spike_train.dead_time_ms > 0 for one in point.model.inputs)
-    return dead or analytic_strip(point, omega0) < _cell_strip(point, omega0) / 2
+    return dead or analytic_strip(point, omega0) < cell_strip(point, omega0) / 2
 
 
 def cell_rate_per_ms(point: OperatingPoint) -> float:
@@ -117,10 +117,11 @@ def slowest_rate_per_ms(point: OperatingPoint, dead_times: bool = True) -> float
 def analytic_strip(point: OperatingPoint, omega0: float, dead_times: bool = True) -> float:
     """Half width of the strip in u = asinh(ω/ω₀) that no pole of the kernels or spike trains enters."""
     trains = [abs(cmath.asinh(1j * p / omega0).imag) for p in _train_poles(point, dead_times)]
-    return min([_cell_strip(point, omega0), *trains])
+    return min([cell_strip(point, omega0), *trains])
 
 
-def _cell_strip(point: OperatingPoint, omega0: float) -> float:
+def cell_strip(point: OperatingPoint, omega0: float) -> float:
+    """Half width of the strip in u = asinh(ω/ω₀) that no pole of the kernels enters."""
     poles = [p for one in point.model.inputs for p in one.kernel.poles_per_ms]
     return min([math.pi / 2, *(abs(cmath.asinh(1j * p / omega0).imag) for p in poles)])
 

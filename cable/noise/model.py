@@ -23,10 +23,13 @@ if TYPE_CHECKING:
     from cable.noise.excursions import Excursions
     from cable.noise.fluctuations import Fluctuations
     from cable.noise.modes import Modes
+    from cable.noise.next_order import NextOrder
+    from cable.noise.next_pair import NextPair
     from cable.noise.pairs import Pair
     from cable.noise.point_neuron import PointNeuron
     from cable.noise.recorded_pair import RecordedPair
     from cable.noise.recordings import Recording
+    from cable.noise.small_fluctuation import SmallFluctuation
     from cable.noise.sources import Sources
     from cable.noise.spectra import Spectrum
 
@@ -226,6 +229,51 @@ class CableModel:
 
         return fluctuations(self, tolerance)
 
+    def next_order(self, tolerance: float = 1e-9) -> NextOrder:
+        """Mean and SD to the next order beyond the linear theory at every point and site, beside the linear answer.
+
+        Args:
+            tolerance: of the linear variances, as in `fluctuations`.
+
+        Raises:
+            NotKnown: conductances whose spikes are correlated.
+            NotConverged: the tolerance cannot be reached.
+        """
+        from cable.noise.next_order import next_order
+
+        return next_order(self, tolerance)
+
+    def next_psd(self, site: str, frequency_Hz: Floats) -> Floats:
+        """(F,) one-sided spectrum of the voltage at a site to the next order, mV²/Hz, at frequencies (F,), Hz.
+
+        Raises:
+            KeyError: the model has no such site.
+            NotKnown: conductances whose spikes are correlated.
+        """
+        from cable.noise.next_pair import next_psd
+
+        return next_psd(self, site, frequency_Hz)
+
+    def next_pair(self, linear: Pair) -> NextPair:
+        """What two electrodes share to the next order, at the lags and frequencies of the linear answer.
+
+        Raises:
+            NotKnown: conductances whose spikes are correlated.
+        """
+        from cable.noise.next_pair import next_pair
+
+        return next_pair(self, linear)
+
+    def small_fluctuation(self, sites: tuple[str, ...] | None = None) -> SmallFluctuation:
+        """How far sites (all of them unless named) are from small fluctuations, which the linear theory assumes.
+
+        Raises:
+            KeyError: the model has no such site.
+        """
+        from cable.noise.small_fluctuation import small_fluctuation
+
+        return small_fluctuation(self, self.site_names if sites is None else tuple(sites))
+
     def spectrum(self, site: str, frequency_Hz: Floats | None = None, to: str | None = None) -> Spectrum:
         """One-sided spectrum of the voltage at a site, in all and by input, and impedances, at frequencies (F,), Hz.
 
@@ -366,6 +414,12 @@ class CableModel:
         from cable.noise.point_neuron import point_neuron
 
         return point_neuron(self, site)
+
+    def _repr_html_(self) -> str:
+        """The model as a notebook shows it."""
+        from cable.noise.cards import model_card
+
+        return model_card(self)
 
     def correlation_matrix(self, tolerance: float = 1e-9) -> Floats:
         """(S, S) correlations at lag 0 between all sites, in the order of `site_names`."""

@@ -6,7 +6,7 @@ from typing import Annotated
 
 import typer
 
-from cable.desk.commands.shared import Force, Quantity, ScenarioArgument, ShareInput, Tolerance
+from cable.desk.commands.shared import Force, NextOrder, Quantity, ScenarioArgument, ShareInput, Tolerance
 from cable.desk.terminal import command
 
 
@@ -27,6 +27,7 @@ def map_(
     branches: Annotated[
         bool, typer.Option("--branches", help="A diagram in which no branch hides another, by path distance.")
     ] = False,
+    next_order: NextOrder = False,
     tolerance: Tolerance = 1e-9,
     force: Force = False,
 ) -> None:
@@ -34,6 +35,7 @@ def map_(
     from cable.desk.figures.style import FIGURE_ENDINGS
     from cable.desk.files import output
     from cable.desk.messages import DeskError, choices, quoted
+    from cable.desk.next_order import check_known, next_quantity
     from cable.desk.quantities import WITH_SITE, quantities, with_site
     from cable.desk.scenario import read_scenario
     from cable.desk.terminal import mention_findings, say_written
@@ -55,9 +57,12 @@ def map_(
         if with_ is not None:
             raise DeskError("--with: goes with --quantity correlation, lag, source or charge-share; take it out")
         chosen = [q for word in words for q in quantities(word, input_ or [], names)]
+    if next_order:
+        chosen = [next_quantity(q) for q in chosen]
+        check_known(read)
     target = output(out, FIGURE_ENDINGS, force, read.files)
     mention_findings(read)
-    field = read.model.fluctuations(tolerance=tolerance)
+    field = read.model.next_order(tolerance).field() if next_order else read.model.fluctuations(tolerance=tolerance)
 
     from cable.desk.figures.branches import draw_branches
     from cable.desk.figures.map import draw_map

@@ -24,3 +24,6 @@ ShareInput = Annotated[
     list[str] | None,
     typer.Option("--input", metavar="NAME", help="An input whose share of the variance is shown; repeatable."),
 ]
+NextOrder = Annotated[
+    bool, typer.Option("--next-order", help="Beyond the linear theory: mean and SD to the next order as well.")
+]

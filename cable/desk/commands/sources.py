@@ -22,6 +22,7 @@ def sources(
 ) -> None:
     """Shares of the variance at a site by cylinder, input, kind and distance."""
     from cable.desk.files import output
+    from cable.desk.next_order import trust
     from cable.desk.scenario import read_scenario
     from cable.desk.site_table import origin
     from cable.desk.source_table import source_sentences, source_summary, source_table
@@ -34,11 +35,13 @@ def sources(
     mention_findings(read)
     found = read.model.sources(name, tolerance)
     if target is None:
-        for sentence in source_sentences(found):
+        for sentence in filter(None, (*source_sentences(found), read.model.small_fluctuation((name,)).sentence())):
             console().print(sentence, markup=False)
         return
     if target.ending in TABLE_ENDINGS:
-        write_table(source_table(found), target, {**origin(read), **source_summary(found)})
+        about = {**origin(read), **source_summary(found)}
+        about["certificate"] = {**about.get("certificate", {}), **trust(read.model, (name,))}
+        write_table(source_table(found), target, about)
     else:
         from cable.desk.figures.sources import draw_sources
         from cable.desk.figures.style import save, styled

@@ -6,7 +6,7 @@ from typing import Annotated
 
 import typer
 
-from cable.desk.commands.shared import Force, ScenarioArgument, SiteArgument
+from cable.desk.commands.shared import Force, NextOrder, ScenarioArgument, SiteArgument
 from cable.desk.terminal import command
 
 
@@ -24,6 +24,7 @@ def spectrum(
     temperature_C: Annotated[
         float | None, typer.Option("--temperature-C", metavar="X", help="Add the cell's thermal noise at this.")
     ] = None,
+    next_order: NextOrder = False,
     force: Force = False,
 ) -> None:
     """Power spectral density of the voltage at a site, in all and by input, and its input impedance."""
@@ -31,6 +32,7 @@ def spectrum(
 
     from cable.desk.files import output
     from cable.desk.messages import DeskError
+    from cable.desk.next_order import check_known, next_psd_sentence, trust
     from cable.desk.scenario import read_scenario
     from cable.desk.site_table import origin
     from cable.desk.spectrum_table import spectrum_sentences, spectrum_table
@@ -47,18 +49,24 @@ def spectrum(
     names = read.site(site), None if to is None else read.site(to)
     endings = (*TABLE_ENDINGS, ".png", ".svg", ".pdf")
     target = output(out, endings, force, read.files) if out is not None else None
+    if next_order:
+        check_known(read)
     mention_findings(read)
     found = read.model.spectrum(names[0], np.geomspace(from_Hz, to_Hz, points), names[1])
+    after = read.model.next_psd(names[0], found.frequency_Hz) if next_order else None
     if target is None:
-        for sentence in spectrum_sentences(found, temperature_C):
+        last = read.model.small_fluctuation((names[0],)).sentence()
+        last = last if after is None else next_psd_sentence(found, after)
+        for sentence in filter(None, (*spectrum_sentences(found, temperature_C), last)):
             console().print(sentence, markup=False)
         return
     if target.ending in TABLE_ENDINGS:
-        write_table(spectrum_table(found, temperature_C), target, {**origin(read), "site": site, "slope": found.slope})
+        about = {"site": site, "slope": found.slope, "certificate": trust(read.model, (names[0],))}
+        write_table(spectrum_table(found, temperature_C, after), target, {**origin(read), **about})
     else:
         from cable.desk.figures.spectrum import draw_spectrum
         from cable.desk.figures.style import save, styled
 
         with styled():
-            save(draw_spectrum(found, read.title, temperature_C), target, read.title)
+            save(draw_spectrum(found, read.title, temperature_C, after), target, read.title)
     say_written(target.path)

@@ -50,8 +50,9 @@ def draw_along(field: Fluctuations, way: WayToSite, quantity: Quantity, title: s
     _limits(upper, [mean - sd, mean + sd, field.mean_mV, np.array([] if threshold is None else [threshold])])
     _limits(lower, [values, quantity.values(field)])
     _mark_sites(upper, lower, field, way, quantity, x, values)
-    upper.set_ylabel("mean ± SD (mV)")
-    lower.set_ylabel(shown(quantity.label, 60) if quantity.word != "mean" else LABELS["mean"])
+    beyond = ", next order" if "next order" in quantity.label else ""
+    upper.set_ylabel(f"mean ± SD{beyond} (mV)")
+    lower.set_ylabel(shown(quantity.label, 60) if quantity.word != "mean" or beyond else LABELS["mean"])
     lower.set_xlabel("distance from the soma along the tree (µm)")
     upper.tick_params(labelbottom=False)
     for axes in (upper, lower):

@@ -12,19 +12,25 @@ from cable.desk.figures.style import COLUMN_MM, GREY, INK, PALE, figure, plain_p
 from cable.desk.messages import shown
 
 if TYPE_CHECKING:
+    from cable.noise.next_pair import NextPair
     from cable.noise.pairs import Pair
 
 HEIGHT_MM, LEFT, RIGHT = 96.0, 0.17, 0.86
 
 
-def draw_pair(pair: Pair, title: str = "") -> Figure:
-    """Covariance with its parts, coherence and phase; call it inside `styled`."""
+def draw_pair(pair: Pair, title: str = "", after: NextPair | None = None) -> Figure:
+    """Covariance with its parts, coherence and phase, and those to the next order; call it inside `styled`."""
     page = figure(COLUMN_MM, HEIGHT_MM)
     upper = page.add_axes((LEFT, 0.53, 0.97 - LEFT, 0.36))
     lower = page.add_axes((LEFT, 0.12, RIGHT - LEFT, 0.29))
     upper.axvline(0.0, color=PALE, linewidth=0.6)
     upper.axhline(0.0, color=PALE, linewidth=0.6)
     upper.plot(pair.lag_ms, pair.covariance_mV2, color=INK, linewidth=1.6, label="all inputs")
+    if after is not None:
+        dots = DASHES[2]
+        upper.plot(
+            pair.lag_ms, after.covariance_mV2, color=INK, linewidth=1.0, linestyle=dots, label="all inputs, next order"
+        )
     parts = pair.covariance_by_input_mV2 if len(pair.covariance_by_input_mV2) > 1 else {}
     for k, (name, part) in enumerate(parts.items()):
         line = DASHES[(k + 1) % len(DASHES)]
@@ -35,6 +41,8 @@ def draw_pair(pair: Pair, title: str = "") -> Figure:
     upper.set_xlabel(f"lag of {b} behind {a} (ms)")
     upper.set_ylabel("covariance (mV²)")
     lower.semilogx(pair.frequency_Hz, pair.coherence, color=INK, linewidth=1.6)
+    if after is not None:
+        lower.semilogx(pair.frequency_Hz, after.coherence, color=INK, linewidth=1.0, linestyle=DASHES[2])
     lower.set_ylim(0.0, 1.03)
     lower.set_ylabel("coherence")
     lower.set_xlabel("frequency (Hz)")
@@ -50,5 +58,6 @@ def draw_pair(pair: Pair, title: str = "") -> Figure:
         axes.yaxis.set_label_coords(-0.14 if axes is upper else -0.165, 0.5)
     page.text(0.02, 0.985, shown(title, 52), va="top", fontsize=8, weight="bold")
     text = f"{a} and {b}: correlation {pair.correlation:.3f}".replace("-", "−")
+    text += f"; to the next order {after.correlation:.3f}".replace("-", "−") if after else ""
     page.text(0.02, 0.94, text, va="top", fontsize=6.5, color=GREY)
     return page

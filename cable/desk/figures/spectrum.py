@@ -6,6 +6,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 from matplotlib.figure import Figure
+from numpy.typing import NDArray
 
 from cable.desk.figures.style import COLUMN_MM, GREY, INK, PALE, figure, plain_powers
 from cable.desk.messages import shown
@@ -13,17 +14,25 @@ from cable.desk.messages import shown
 if TYPE_CHECKING:
     from cable.noise.spectra import Spectrum
 
+Floats = NDArray[np.float64]
 HEIGHT_MM, LEFT, RANGE = 96.0, 0.19, 1e7
 DASHES = ((0, ()), (0, (5, 2)), (0, (1.5, 1.5)), (0, (6, 2, 1.5, 2)), (0, (3, 1.2)))
 
 
-def draw_spectrum(spectrum: Spectrum, title: str = "", temperature_C: float | None = None) -> Figure:
-    """Density and impedance against frequency, both on logarithmic axes; call it inside `styled`."""
+def draw_spectrum(
+    spectrum: Spectrum, title: str = "", temperature_C: float | None = None, after: Floats | None = None
+) -> Figure:
+    """Density and impedance against frequency, both on logarithmic axes; call it inside `styled`.
+
+    `after` (F,) is the density to the next order.
+    """
     page = figure(COLUMN_MM, HEIGHT_MM)
     upper = page.add_axes((LEFT, 0.44, 0.97 - LEFT, 0.46))
     lower = page.add_axes((LEFT, 0.12, 0.97 - LEFT, 0.27), sharex=upper)
     f = spectrum.frequency_Hz
     upper.loglog(f, spectrum.psd_mV2_per_Hz, color=INK, linewidth=1.6, label="all inputs")
+    if after is not None:
+        upper.loglog(f, after, color=INK, linewidth=1.0, linestyle=DASHES[2], label="all inputs, next order")
     parts = spectrum.psd_by_input_mV2_per_Hz if len(spectrum.psd_by_input_mV2_per_Hz) > 1 else {}
     for k, (name, part) in enumerate(parts.items()):
         upper.loglog(f, part, color=GREY, linewidth=0.9, linestyle=DASHES[(k + 1) % len(DASHES)], label=shown(name, 30))
