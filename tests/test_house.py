@@ -12,9 +12,10 @@ import pytest
 ROOT = Path(__file__).parent.parent
 ABOVE = {
     "morphology": ("cable",),
-    "cable/theory": ("cable.network", "cable.noise", "cable.desk"),
-    "cable/network": ("cable.noise", "cable.desk"),
-    "cable/noise": ("cable.desk",),
+    "cable/theory": ("cable.network", "cable.noise", "cable.simulation", "cable.desk"),
+    "cable/network": ("cable.noise", "cable.simulation", "cable.desk"),
+    "cable/noise": ("cable.simulation", "cable.desk"),
+    "cable/simulation": ("cable.desk",),
 }
 
 

@@ -19,6 +19,8 @@ from cable.desk.commands.modes import modes
 from cable.desk.commands.pair import pair
 from cable.desk.commands.point_neuron import point_neuron
 from cable.desk.commands.record import record
+from cable.desk.commands.report import report
+from cable.desk.commands.simulate import simulate
 from cable.desk.commands.sources import sources
 from cable.desk.commands.spectrum import spectrum
 from cable.desk.commands.start import start
@@ -51,6 +53,8 @@ app.command("modes")(modes)
 app.command("excursions")(excursions)
 app.command("point-neuron")(point_neuron)
 app.command("record")(record)
+app.command("simulate")(simulate)
+app.command("report")(report)
 
 
 def _show_version(asked: bool) -> None:

@@ -46,6 +46,30 @@ class Table:
         plain = self.plain()
         return [dict(zip(plain, row, strict=True)) for row in zip(*plain.values(), strict=True)]
 
+    def to_numpy(self) -> NDArray[np.void]:
+        """(N,) a structured array, a field a column."""
+        return self.structured()
+
+    def to_pandas(self) -> Any:
+        """The table as a pandas DataFrame.
+
+        Raises:
+            ImportError: pandas is not installed.
+        """
+        from cable.noise.columns import data_frame
+
+        return data_frame(self.plain())
+
+    def _repr_html_(self) -> str:
+        """The table as a notebook shows it; of a long one the first and the last rows."""
+        from cable.noise.cards import MOST_ROWS, html_table, number, text
+
+        rows = [[number(v) if isinstance(v, float) else text(v) for v in row.values()] for row in self.rows()]
+        half = MOST_ROWS // 2
+        few = rows if len(rows) <= MOST_ROWS else [*rows[:half], ["…"] * len(self.columns), *rows[-half:]]
+        told = f"{len(self):,} rows, {len(self.columns)} columns"
+        return html_table([text(name) for name in self.columns], few, told)
+
     def structured(self) -> NDArray[np.void]:
         """(N,) a structured array, a field a column; text as fixed-width Unicode."""
         arrays = {name: np.asarray(column) for name, column in self.columns.items()}

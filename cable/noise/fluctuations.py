@@ -5,7 +5,7 @@ from __future__ import annotations
 import math
 from dataclasses import dataclass
 from functools import cached_property
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -131,6 +131,28 @@ class Fluctuations:
         Rice's formula for a stationary Gaussian voltage (Rice 1945, Bell Syst Tech J 24:46; from memory).
         """
         return None if self._upcrossing is None else self._points(self._upcrossing)
+
+    def to_numpy(self) -> NDArray[np.void]:
+        """(N,) a structured array: all answers at the points of the tree, named as in the files of `table`."""
+        from cable.noise.columns import columns, structured
+
+        return structured(columns(self))
+
+    def to_pandas(self) -> Any:
+        """The same as a pandas DataFrame.
+
+        Raises:
+            ImportError: pandas is not installed.
+        """
+        from cable.noise.columns import columns, data_frame
+
+        return data_frame(columns(self))
+
+    def _repr_html_(self) -> str:
+        """The answer as a notebook shows it: sites, certificate, a small map."""
+        from cable.noise.cards import field_card
+
+        return field_card(self)
 
     @cached_property
     def sites(self) -> tuple[SiteFluctuations, ...]:

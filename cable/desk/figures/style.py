@@ -19,6 +19,7 @@ from matplotlib.figure import Figure
 from matplotlib.ticker import FuncFormatter, LogLocator, NullFormatter
 from numpy.typing import NDArray
 
+from cable.desk.figures.shown import ShownFigure
 from cable.desk.files import Output
 from cable.desk.messages import shown, version
 
@@ -101,7 +102,7 @@ def bar_label(bar: Axes, label: str) -> None:
 
 def figure(width_mm: float, height_mm: float) -> Figure:
     """An empty figure of this size; call it inside `styled`."""
-    return Figure(figsize=(width_mm * MM, height_mm * MM), dpi=DPI)
+    return ShownFigure(figsize=(width_mm * MM, height_mm * MM), dpi=DPI)
 
 
 def save(drawn: Figure, target: Output, title: str) -> None:

@@ -1,0 +1,1 @@
+"""Stochastic simulation of a scenario, to check the linear theory and to see where it ends."""
