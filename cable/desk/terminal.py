@@ -4,12 +4,14 @@ from __future__ import annotations
 
 import codecs
 import functools
+import inspect
 import io
 import os
 import sys
 from collections.abc import Callable
 from contextlib import suppress
-from typing import TYPE_CHECKING, Any, ParamSpec
+from contextvars import ContextVar
+from typing import TYPE_CHECKING, Annotated, Any
 
 import typer
 
@@ -21,7 +23,8 @@ if TYPE_CHECKING:
 
     from cable.desk.scenario import Scenario
 
-P = ParamSpec("P")
+Quiet = Annotated[bool, typer.Option("--quiet", help="Say nothing beside the result but mistakes.")]
+_QUIET: ContextVar[bool] = ContextVar("quiet", default=False)  # of the command that runs
 USER_ERROR, INTERRUPTED = 2, 130
 WIDEST = 10_000  # columns that a grid is measured in
 PIPE_WIDTH = 200  # columns of a table that goes into a pipe, where no terminal says how wide it is
@@ -86,29 +89,35 @@ def give_up_stdout() -> None:
         os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
 
 
+def is_quiet() -> bool:
+    """Whether the command that runs was asked to be quiet."""
+    return _QUIET.get()
+
+
 def say_written(path: object) -> None:
     """Say on a terminal what was written; silent in a pipe."""
-    if sys.stderr.isatty():
+    if sys.stderr.isatty() and not is_quiet():
         say(f"wrote {path}")
 
 
 def mention_findings(scenario: Scenario) -> None:
     """One line on stderr where the reconstruction was read with warnings."""
     warnings = [f for f in scenario.findings if f.severity == "warning"]
-    if warnings:
+    if warnings and not is_quiet():
         count = f"{len(warnings)} warning{'' if len(warnings) == 1 else 's'}"
         path = scenario.morphology_path
         say(f"{count} about {shown(path.name)}; see: cablenoise inspect {shown(path)}")
 
 
-def command(function: Callable[P, Any]) -> Callable[P, None]:
-    """Let a command end as a person expects: exit 2 and one message for a mistake, 130 on Ctrl-C.
+def command(function: Callable[..., Any]) -> Callable[..., None]:
+    """Let a command end as a person expects: exit 2 and one message for a mistake, 130 on Ctrl-C. Adds --quiet.
 
     Everything else that goes wrong is a defect of the program and keeps its traceback.
     """
 
     @functools.wraps(function)
-    def run(*args: P.args, **kwargs: P.kwargs) -> None:
+    def run(*args: Any, quiet: bool = False, **kwargs: Any) -> None:
+        told = _QUIET.set(quiet)
         try:
             function(*args, **kwargs)
             sys.stdout.flush()
@@ -126,7 +135,14 @@ def command(function: Callable[P, Any]) -> Callable[P, None]:
                 give_up_stdout()
             say(message)
             raise typer.Exit(USER_ERROR) from None
+        finally:
+            _QUIET.reset(told)
 
+    shape = inspect.signature(function, eval_str=True)
+    more = inspect.Parameter("quiet", inspect.Parameter.KEYWORD_ONLY, default=False, annotation=Quiet)
+    # typer reads the options of a command from its signature
+    run.__signature__ = shape.replace(parameters=[*shape.parameters.values(), more])  # type: ignore[attr-defined]
+    run.__annotations__ = {name: one.annotation for name, one in shape.parameters.items()} | {"quiet": Quiet}
     return run
 
 

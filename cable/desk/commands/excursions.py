@@ -36,6 +36,8 @@ def excursions(
     from cable.desk.excursion_table import excursion_about, excursion_sentences, excursion_table, print_excursions
     from cable.desk.files import output
     from cable.desk.messages import DeskError, shown
+    from cable.desk.next_order import trust
+    from cable.desk.progress import waiting
     from cable.desk.scenario import read_scenario
     from cable.desk.site_table import origin
     from cable.desk.tables import TABLE_ENDINGS, write_table
@@ -49,10 +51,13 @@ def excursions(
         raise DeskError(f"--share: found {share:g}, expected a number above 0 and up to 0.5; correct it")
     target = output(out, (*TABLE_ENDINGS, ".png", ".svg", ".pdf"), force, read.files) if out is not None else None
     mention_findings(read)
-    found = read.model.excursions(names, level, tolerance)
+    with waiting("following events in time"):
+        found = read.model.excursions(names, level, tolerance)
     if target is not None:
         if target.ending in TABLE_ENDINGS:
-            write_table(excursion_table(found, share), target, {**origin(read), **excursion_about(found)})
+            about = {**origin(read), **excursion_about(found)}
+            about["certificate"] |= trust(read.model, names)
+            write_table(excursion_table(found, share), target, about)
         else:
             from cable.desk.figures.excursions import draw_excursions
             from cable.desk.figures.style import save, styled
@@ -69,6 +74,8 @@ def excursions(
     errors = [one.cumulant_relative_error for one in found if not math.isnan(one.cumulant_relative_error)]
     if errors:
         console().print(f"Skewness and kurtosis are exact to about {max(errors):.0e} of them.", markup=False)
+    if doubt := read.model.small_fluctuation(names).sentence():
+        console().print(doubt, markup=False)
     if found[0].level_mV is None:
         told = "No level was given: ask with --level-mV X, or put [threshold] level_mV into the scenario."
         console().print(told, markup=False)

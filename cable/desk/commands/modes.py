@@ -26,6 +26,8 @@ def modes(
     from cable.desk.files import output
     from cable.desk.messages import DeskError
     from cable.desk.mode_table import mode_quantities, mode_sentences, mode_table
+    from cable.desk.next_order import trust
+    from cable.desk.progress import waiting
     from cable.desk.scenario import read_scenario
     from cable.desk.site_table import origin
     from cable.desk.tables import TABLE_ENDINGS, write_table
@@ -35,18 +37,19 @@ def modes(
     target = output(out, (*TABLE_ENDINGS, ".png", ".svg", ".pdf"), force, read.files) if out is not None else None
     mention_findings(read)
     try:
-        found = read.model.modes(count)
+        with waiting("finding modes"):
+            found = read.model.modes(count)
     except ValueError as error:
         option = "--" if str(error).startswith("count: ") else ""
         raise DeskError(f"{option}{error}") from None
     if target is None:
-        for sentence in mode_sentences(found):
+        for sentence in filter(None, (*mode_sentences(found), read.model.small_fluctuation().sentence())):
             console().print(sentence, markup=False)
         return
     if target.ending in TABLE_ENDINGS:
         about = {**origin(read), "share": found.share, "participation": found.participation}
         about["participation_se"] = found.participation_se
-        certificate = {"quadrature_relative_error": found.relative_error}
+        certificate = {"quadrature_relative_error": found.relative_error, **trust(read.model)}
         write_table(mode_table(read.model.tree, found), target, {**about, "certificate": certificate})
     else:
         from cable.desk.figures.map import draw_map

@@ -20,6 +20,8 @@ def point_neuron(
     """The numbers of a single-compartment neuron that stands for the cell as seen from a site."""
     from cable.desk.files import output
     from cable.desk.messages import shown
+    from cable.desk.next_order import trust
+    from cable.desk.progress import waiting
     from cable.desk.scenario import read_scenario
     from cable.desk.site_table import origin
     from cable.desk.tables import TABLE_ENDINGS, Table, write_table
@@ -29,9 +31,11 @@ def point_neuron(
     name = read.site(site)
     target = output(out, TABLE_ENDINGS, force, read.files) if out is not None else None
     mention_findings(read)
-    found = read.model.point_neuron(name)
+    with waiting("fitting the autocovariance"):
+        found = read.model.point_neuron(name)
     if target is not None:
-        write_table(Table({key: [value] for key, value in found.as_dict().items()}), target, origin(read))
+        about = {**origin(read), "certificate": trust(read.model, (name,))}
+        write_table(Table({key: [value] for key, value in found.as_dict().items()}), target, about)
         say_written(target.path)
         return
     told = [
@@ -46,5 +50,5 @@ def point_neuron(
     if not found.sd_mV > 0:
         reason = "nothing fluctuates" if found.sd_mV == 0 else read.model.fluctuations().variance_note
         told = [f"{shown(name, 60)}: {found.mean_mV:.2f} mV; no autocovariance: {reason}.", told[1]]
-    for sentence in told:
+    for sentence in filter(None, (*told, read.model.small_fluctuation((name,)).sentence())):
         console().print(sentence, markup=False)

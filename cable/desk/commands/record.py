@@ -40,6 +40,8 @@ def record(
 
     from cable.desk.files import output
     from cable.desk.messages import DeskError, choices, quoted
+    from cable.desk.next_order import trust
+    from cable.desk.progress import waiting
     from cable.desk.record_table import charge_table, record_document, record_sentences, record_table, study_record
     from cable.desk.scenario import read_scenario
     from cable.desk.site_table import origin
@@ -74,16 +76,18 @@ def record(
         write_table(charge_table(read.model, shares), target, {**origin(read), "site": here})
         say_written(target.path)
         return
-    study = study_record(
-        read.model, here, other, np.geomspace(from_Hz, to_Hz, points), wanted_error, seconds, tolerance
-    )
+    frequency = np.geomspace(from_Hz, to_Hz, points)
+    with waiting("computing the record"):
+        study = study_record(read.model, here, other, frequency, wanted_error, seconds, tolerance)
     if target is None:
-        for sentence in record_sentences(study):
+        for sentence in filter(None, (*record_sentences(study), read.model.small_fluctuation((here,)).sentence())):
             console().print(sentence, markup=False)
         return
     if target.ending == ".json":
         with target.writing(text=True) as stream:
-            stream.write(to_json({**origin(read), **record_document(study)}))
+            document = {**origin(read), **record_document(study)}
+            document["certificate"] |= trust(read.model, (here,))
+            stream.write(to_json(document))
     elif target.ending in TABLE_ENDINGS:
         write_table(record_table(study), target, {**origin(read), "site": here, "mode": study.recording.electrode.mode})
     else:

@@ -29,6 +29,7 @@ def table(
     from cable.desk.files import output
     from cable.desk.messages import DeskError
     from cable.desk.next_order import check_known, next_sentences, trust, trust_of_next, with_next
+    from cable.desk.progress import waiting
     from cable.desk.scenario import read_scenario
     from cable.desk.site_table import electrode_note, metadata, points_table, sites_table, with_correlations
     from cable.desk.tables import TABLE_ENDINGS, write_table
@@ -43,8 +44,9 @@ def table(
     mention_findings(read)
     if next_order:
         check_known(read)
-    found = read.model.next_order(tolerance) if next_order else None
-    field = found.linear if found else read.model.fluctuations(tolerance=tolerance)
+    with waiting("computing all points"):
+        found = read.model.next_order(tolerance) if next_order else None
+        field = found.linear if found else read.model.fluctuations(tolerance=tolerance)
     if target is None:
         notes = [*field.certificate.sentences(), field.variance_note, field.upcrossing_note, electrode_note(read.model)]
         notes += next_sentences(found) if found else [read.model.small_fluctuation().sentence()]

@@ -24,7 +24,7 @@ if TYPE_CHECKING:
     from cable.noise.model import CableModel
 
 ENDINGS = (".html",)
-SCRIPTS = ("data.js", "map.js", "curves.js", "table.js", "page.js")
+SCRIPTS = ("data.js", "map.js", "pointing.js", "curves.js", "table.js", "page.js")
 
 
 def render(
