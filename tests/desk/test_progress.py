@@ -40,8 +40,6 @@ from cable.desk import progress
 progress.PATIENCE_S = 0.05
 with progress.waiting('adding up'): {}
 """
-    "import time; from cable.desk import progress; progress.PATIENCE_S = 0.05\nwith progress.waiting('adding up'): {}"
-)
 
 
 def test_waiting_is_told_after_a_while_and_short_work_is_not() -> None:
