@@ -22,9 +22,11 @@ from cable import CableModel, write_report
 from morphology import CellTree, Site
 from morphology.growth import random_arbor
 
-COLLECT = (
-    "() => { const told = (at) => { frames.push(at); requestAnimationFrame(told); }; requestAnimationFrame(told); }"
-)
+COLLECT = """() => {
+    window.frames_ = [];
+    const told = (at) => { frames_.push(at); requestAnimationFrame(told); };
+    requestAnimationFrame(told);
+}"""
 MOVES = 150
 
 
@@ -46,7 +48,6 @@ def measure(tree: CellTree) -> dict[str, object]:
         expected = model.fluctuations(1e-6).at("far").sd_mV
         if abs(float(shown) / expected - 1) > 1e-3:
             raise SystemExit(f"the page shows an SD of {shown} mV, expected {expected:.5g}; no times are given")
-        page.evaluate("window.frames_ = []")
         page.evaluate(COLLECT)
         box = page.locator("#overlay").bounding_box()
         for k in range(MOVES):
