@@ -86,6 +86,8 @@ def rows(point: OperatingPoint) -> list[tuple[int, int | None]]:
 def by_frequency(point: OperatingPoint, nodes: list[int], frequency_Hz: NDArray[np.float64]) -> Complexes:
     """(parts, nodes, nodes, F) cross-spectra at real frequencies (F,), Hz; two-sided per rad/ms."""
     s = 1j * OMEGA_PER_MS_PER_HZ * np.asarray(frequency_Hz, dtype=float)
+    if not len(s):
+        return np.zeros((len(point.model.part_names), len(nodes), len(nodes), 0), dtype=np.complex128)
     with ThreadPoolExecutor(2) as pool:
         blocks = pool.map(lambda k: cross_spectra(point, nodes, s[k : k + BLOCK]), range(0, len(s), BLOCK))
         return np.concatenate(list(blocks), axis=-1)

@@ -94,6 +94,7 @@ class Simulation:
         steps_per_second: of one process.
         interrupted: whether it was stopped early.
         sd_points_mV: (N,) SD at all points of the tree, less exact than at the sites.
+        moments: the batches, site by site, voltages counted from the compartments' mean state.
         trace_ms, trace_mV: (T,) and (T, sites) voltages at the beginning of the first run, after its burn-in.
     """
 
@@ -112,6 +113,7 @@ class Simulation:
     steps_per_second: float
     interrupted: bool
     sd_points_mV: Floats
+    moments: Moments
     trace_ms: Floats
     trace_mV: Floats
 
@@ -190,6 +192,7 @@ def simulate(
         steps_per_second=sum(one.steps for one in results) / sum(one.seconds for one in results),
         interrupted=any(one.stopped for one in results) or len(results) < runs,
         sd_points_mV=_spread(results)[grid.point.layout.row_node],
+        moments=moments,
         trace_ms=np.arange(len(first), dtype=float) * (thinned * grid.dt_ms),
         trace_mV=grid.cells.mean_mV[nodes] + first,
     )
