@@ -32,7 +32,7 @@ BURN_IN = 12.0  # slowest time constants before statistics begin
 BATCH = 25.0  # correlation times a batch, at least
 FEWEST, MOST_BATCHES = 8, 400  # batches in all; of one run
 TRACE_POINTS = 20_000
-PART = 1 / 3  # of the expected standard error that the grid may add
+PART = 0.1  # of the expected standard error that the grid may add
 
 
 class TooShort(ValueError):

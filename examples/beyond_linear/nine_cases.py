@@ -100,7 +100,7 @@ def rows(case: Case, scenario: str, seconds: float) -> list[str]:
         lines.append(
             f"| {case.cell} | {scenario} | {site} | {at.sd_mV:.3f} | {sd:.3f} | {simulated:.3f} ± {simulated * se:.3f} "
             f"| {100 * (1 / ratio - 1):+.1f} % | {100 * (sd / simulated - 1):+.1f} % | {100 * se:.1f} % "
-            f"| {mean - at.mean_mV:+.2f} | {shift:+.2f} | {100 * index.sd_relative_error[k]:.0f} % |"
+            f"| {mean - at.mean_mV:+.2f} | {shift:+.2f} | {100 * index.sd_relative_error[k]:.1f} % |"
         )
     return lines
 

@@ -13,6 +13,7 @@ COMMANDS = (
     "map --out OUT.svg", "along SITE", "along SITE --out OUT.csv", "spectrum SITE --out OUT.csv", "spectrum SITE",
     "pair soma SITE --out OUT.json", "sources SITE", "sources SITE --out OUT.csv", "point-neuron SITE",
     "excursions SITE", "record SITE", "inspect CELL", "inspect CELL --json", "modes --out OUT.json",
+    "report --out OUT.html", "excursions --out OUT.svg", "map --branches --out OUT.svg",
 )  # fmt: skip
 
 

@@ -39,6 +39,8 @@ OUTPUTS = (
     "spectrum SITE --out OUT.csv", "spectrum SITE --out OUT.svg", "spectrum SITE", "pair soma SITE --out OUT.svg",
     "pair --all", "pair --all --out OUT.svg", "pair --all --out OUT.csv", "sources SITE --out OUT.csv", "sources SITE",
     "sources SITE --out OUT.svg", "point-neuron SITE", "excursions SITE", "record SITE", "record SITE --out OUT.csv",
+    "excursions --out OUT.svg", "excursions", "map --branches --out OUT.svg", "modes", "report --out OUT.html",
+    "simulate --seconds 6 --dt-ms 0.4 --runs 1 --out OUT.json --figure OUT.svg --traces OUT.csv",
 )  # fmt: skip
 
 

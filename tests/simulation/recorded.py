@@ -143,7 +143,7 @@ def main(arguments: list[str]) -> None:
     print("| cell | simulated | batches | s.e. of SD, at most | statistics | largest of them in s.e. | probability |")
     print("|---|---|---|---|---|---|---|")
     for k, (name, (model, seconds)) in enumerate(cells().items()):
-        one = compare(model, share * seconds, 100 + k)
+        one = compare(model, share * seconds, 200 + k)
         print(
             f"| {name} | {one.seconds:.0f} s | {one.batches} | {100 * one.sd_error:.2f} % | {one.statistics} "
             f"| {one.worst_z:.1f} | {one.probability:.2g} |",
