@@ -14,9 +14,9 @@ from cable.desk.tables import Table
 if TYPE_CHECKING:
     from cable.desk.quantities import Quantity
     from cable.desk.scenario import Scenario
+    from cable.noise.beyond.next_order import NextOrder
+    from cable.noise.beyond.next_pair import NextPair
     from cable.noise.model import CableModel
-    from cable.noise.next_order import NextOrder
-    from cable.noise.next_pair import NextPair
     from cable.noise.spectra import Spectrum
 
 QUANTITIES = ("mean", "sd", "variance")
@@ -35,7 +35,7 @@ def next_order(read: Scenario, tolerance: float) -> NextOrder:
 
 def check_known(read: Scenario) -> None:
     """Raise DeskError where the next order is not known for a scenario."""
-    from cable.noise.next_order import NotKnown, check_known
+    from cable.noise.beyond.next_order import NotKnown, check_known
 
     try:
         check_known(read.model)

@@ -12,8 +12,8 @@ from cable.desk.messages import shown
 from cable.desk.tables import Table
 
 if TYPE_CHECKING:
+    from cable.noise.beyond.next_pair import NextPair
     from cable.noise.model import CableModel
-    from cable.noise.next_pair import NextPair
     from cable.noise.pairs import Pair
 
 LAGS, FREQUENCIES = 401, 61

@@ -14,10 +14,10 @@ from cable.desk.tables import Table
 from morphology import kind_name
 
 if TYPE_CHECKING:
-    from cable.noise.clamp import ClampShares
     from cable.noise.model import CableModel
-    from cable.noise.recorded_pair import RecordedPair
-    from cable.noise.recordings import RecordedSpectrum, Recording
+    from cable.noise.record.clamp import ClampShares
+    from cable.noise.record.recorded_pair import RecordedPair
+    from cable.noise.record.recordings import RecordedSpectrum, Recording
 
 STAGES = ("true", "loaded", "recorded")
 

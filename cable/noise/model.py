@@ -14,17 +14,17 @@ from cable.noise.refinement import Refined, refine
 from cable.theory.electrode import Electrode
 
 if TYPE_CHECKING:
-    from cable.noise.clamp import ClampShares
+    from cable.noise.beyond.next_order import NextOrder
+    from cable.noise.beyond.next_pair import NextPair
     from cable.noise.correlation import CorrelationMap
     from cable.noise.excursions import Excursions
     from cable.noise.fluctuations import Fluctuations
     from cable.noise.modes import Modes
-    from cable.noise.next_order import NextOrder
-    from cable.noise.next_pair import NextPair
     from cable.noise.pairs import Pair
     from cable.noise.point_neuron import PointNeuron
-    from cable.noise.recorded_pair import RecordedPair
-    from cable.noise.recordings import Recording
+    from cable.noise.record.clamp import ClampShares
+    from cable.noise.record.recorded_pair import RecordedPair
+    from cable.noise.record.recordings import Recording
     from cable.noise.small_fluctuation import SmallFluctuation
     from cable.noise.sources import Sources
     from cable.noise.spectra import Spectrum
@@ -90,7 +90,7 @@ class CableModel(CellSetup):
             NotKnown: conductances whose spikes are correlated.
             NotConverged: the tolerance cannot be reached.
         """
-        from cable.noise.next_order import next_order
+        from cable.noise.beyond.next_order import next_order
 
         return next_order(self, tolerance)
 
@@ -101,7 +101,7 @@ class CableModel(CellSetup):
             KeyError: the model has no such site.
             NotKnown: conductances whose spikes are correlated.
         """
-        from cable.noise.next_pair import next_psd
+        from cable.noise.beyond.next_pair import next_psd
 
         return next_psd(self, site, frequency_Hz)
 
@@ -111,7 +111,7 @@ class CableModel(CellSetup):
         Raises:
             NotKnown: conductances whose spikes are correlated.
         """
-        from cable.noise.next_pair import next_pair
+        from cable.noise.beyond.next_pair import next_pair
 
         return next_pair(self, linear)
 
@@ -208,7 +208,7 @@ class CableModel(CellSetup):
             KeyError: the model has no such site.
             NotConverged: the tolerance cannot be reached.
         """
-        from cable.noise.recordings import recording
+        from cable.noise.record.recordings import recording
 
         return recording(self, site, tolerance)
 
@@ -220,7 +220,7 @@ class CableModel(CellSetup):
             ValueError: one site twice, or windows that differ.
             NotConverged: the tolerance cannot be reached.
         """
-        from cable.noise.recorded_pair import recorded_pair
+        from cable.noise.record.recorded_pair import recorded_pair
 
         return recorded_pair(self, a, b, tolerance)
 
@@ -232,7 +232,7 @@ class CableModel(CellSetup):
             ValueError: the electrode there is no voltage clamp.
             NotConverged: the tolerance cannot be reached.
         """
-        from cable.noise.clamp import clamp_shares
+        from cable.noise.record.clamp import clamp_shares
 
         return clamp_shares(self, site, tolerance)
 

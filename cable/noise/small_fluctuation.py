@@ -9,7 +9,7 @@ Where synapses of an input are correlated, what they have in common adds C(τ) �
 over the synapses; spikes that two inputs share are left out.
 
 Saturation. A single event at y takes the share b/(1 + b) of its own driving force away, b = Σ c ĥ(p) Z_yy(p)/ĥ(0)
-(`cable.noise.events`). The number is its mean over the synapses, weighted with what each makes of the variance at x.
+(`beyond.events`). The number is its mean over the synapses, weighted with what each makes of the variance at x.
 
 The error of a linear SD is of the order of both. Their sum, with `CONDUCTANCE_WEIGHT` for κ², was at least as large
 as the error in all cases that were tried, from weak to strong, on spheres and trees; often it is several times
@@ -24,7 +24,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 from numpy.typing import NDArray
 
-from cable.noise.events import conductance_covariance, exponentials
+from cable.noise.beyond.events import conductance_covariance, exponentials
 from cable.noise.operating_point import OperatingPoint
 
 if TYPE_CHECKING:

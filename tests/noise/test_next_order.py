@@ -8,7 +8,7 @@ import numpy as np
 import pytest
 
 from cable import CableModel, Kernel, SynapticInput
-from cable.noise.next_order import NotKnown
+from cable.noise.beyond.next_order import NotKnown
 from cable.theory.spiketrain import SpikeTrain
 from noise.beyond_linear import IN_VIVO, sphere_exact, sphere_model, tree_exact, tree_model
 from noise.cells import EXCITATION, INHIBITION, arbor, model
@@ -118,7 +118,7 @@ def test_splitting_an_input_in_two_changes_nothing() -> None:
 
 def test_dividing_a_cylinder_changes_next_to_nothing() -> None:
     coarse, fine = (model(arbor(6, 12, untapered=True)) for _ in range(2))
-    import cable.noise.next_order as next_order
+    import cable.noise.beyond.next_order as next_order
 
     with pytest.MonkeyPatch.context() as patch:
         a = coarse.next_order()

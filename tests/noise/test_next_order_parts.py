@@ -8,10 +8,10 @@ from scipy.integrate import dblquad, quad
 from scipy.interpolate import CubicSpline
 
 from cable import Kernel
-from cable.noise.crossing import slow_modes
-from cable.noise.events import conductance_covariance, exponentials, scattering
-from cable.noise.local_impedance import local_impedance
-from cable.noise.sinc_rule import SincRule
+from cable.noise.beyond.crossing import slow_modes
+from cable.noise.beyond.events import conductance_covariance, exponentials, scattering
+from cable.noise.beyond.local_impedance import local_impedance
+from cable.noise.beyond.sinc_rule import SincRule
 from noise.beyond_linear import sphere_model
 from noise.cells import EXCITATION, arbor, model
 from tolerances import BENT_PATH, EXACT, IDENTITY, NEXT_ORDER, ON_A_PATH, REFINED, SPLIT_RATES
@@ -142,8 +142,8 @@ def test_the_crossing_terms_converge_with_the_modes() -> None:
 
 def test_near_places_stand_for_the_fast_modes() -> None:
     """With a few slow modes and what they leave, taken as local, the variance is nearer to that with many modes."""
-    import cable.noise.next_order as next_order
-    from cable.noise.next_medium import NextMedium
+    import cable.noise.beyond.next_order as next_order
+    from cable.noise.beyond.next_medium import NextMedium
 
     found = {}
     for modes, nearby in ((40, True), (3, True), (3, False)):
@@ -159,7 +159,7 @@ def test_near_places_stand_for_the_fast_modes() -> None:
 
 def test_near_places_by_quadrature() -> None:
     """The closed forms of both terms for Z = 1/(C (s + μ)), against integrals over time with z = e^{-μt}/C."""
-    from cable.noise.crossing_nearby import nearby
+    from cable.noise.beyond.crossing_nearby import nearby
 
     mu, capacitance, omega = 0.3, 2.0, 0.4
     one, other = (np.array([0.7 + 0j]), np.array([0.5 + 0j])), (np.array([0.2 + 0j]), np.array([0.9 + 0j]))

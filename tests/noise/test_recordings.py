@@ -13,7 +13,7 @@ from scipy import signal
 from scipy.integrate import quad
 
 from cable.noise.cross import by_frequency
-from cable.noise.recorded_integral import _removed
+from cable.noise.record.recorded_integral import _removed
 from cable.theory.electrode import Electrode
 from cable.theory.filters import LowPass
 from noise.electrode_cells import (

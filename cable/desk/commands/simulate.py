@@ -36,7 +36,6 @@ def simulate(
     """Simulate real events and full conductances; mean, SD, correlations and skewness beside the computed ones."""
     import math
 
-    from cable import simulate as simulate_model
     from cable.desk.files import output
     from cable.desk.messages import DeskError, shown
     from cable.desk.progress import progress
@@ -45,6 +44,7 @@ def simulate(
     from cable.desk.site_table import origin
     from cable.desk.tables import TABLE_ENDINGS, to_json, write_table
     from cable.desk.terminal import mention_findings, say, say_written
+    from cable.simulation.simulation import simulate as simulate_model
 
     for name, value in (("--seconds", seconds), ("--trace-seconds", trace_seconds), ("--dt-ms", dt_ms)):
         if value is not None and not (math.isfinite(value) and value > 0):

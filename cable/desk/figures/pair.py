@@ -12,7 +12,7 @@ from cable.desk.figures.style import COLUMN_MM, GREY, INK, PALE, figure, plain_p
 from cable.desk.messages import shown
 
 if TYPE_CHECKING:
-    from cable.noise.next_pair import NextPair
+    from cable.noise.beyond.next_pair import NextPair
     from cable.noise.pairs import Pair
 
 HEIGHT_MM, LEFT, RIGHT = 96.0, 0.17, 0.86

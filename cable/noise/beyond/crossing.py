@@ -1,7 +1,7 @@
 """The crossing terms of the expansion: two places whose conductances fluctuate while either hears of the other.
 
 With v = Z[γF - γv] the variance to the next order holds four factors γ, joined in pairs. Where the pairs do not cross
-one event acts on its own voltage or on the voltage around it, and everything is local (`cable.noise.next_order`).
+one event acts on its own voltage or on the voltage around it, and everything is local (see `next_order`).
 Where they cross, places y and y' are joined by Z_yy', over all of the cell:
   (a) in ⟨v₃v₁⟩: Z γ_y Z γ_y' Z γ_y F, with the outer γ_y joined and γ_y' joined with v₁ = Z γ_y' F;
   (b) in ⟨v₂v₂⟩: ⟨γ_y v_y'⟩⟨γ_y' v_y⟩, by which the sources γ_y v_y and γ_y' v_y' at two places agree.
@@ -18,9 +18,9 @@ import numpy as np
 from numpy.typing import NDArray
 from scipy import sparse
 
-from cable.noise.events import conductance_covariance
+from cable.noise.beyond.events import conductance_covariance
+from cable.noise.beyond.sinc_rule import SincRule
 from cable.noise.operating_point import OperatingPoint
-from cable.noise.sinc_rule import SincRule
 
 Floats = NDArray[np.float64]
 Complexes = NDArray[np.complex128]

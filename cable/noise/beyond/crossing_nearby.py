@@ -1,6 +1,6 @@
 """What the slow modes leave of the crossing terms: places so near each other that their surroundings are alike.
 
-Fast relaxations reach no far, so the two places of a crossing term (`cable.noise.crossing`) lie in one neighbourhood.
+Fast relaxations reach no far, so the two places of a crossing term (`crossing`) lie in one neighbourhood.
 Where synapses are spread like membrane there, the sum over the second place is the composition of two propagators,
 Σ_y' z_yy'(t) C_y' z_y'y(t') = z_yy(t + t'), and the term is a local source of strength F_a N_a F_b N_b/C times
     (a) 2 Re h(ω) Ĉ_b(ω),   h = ∫∫ C_a(u + u') z(u + u') e^{-iωu} du du',

@@ -1,4 +1,4 @@
-"""Mean and SD at all points to the next order beyond the linear theory; `cable.noise.next_medium` has the terms."""
+"""Mean and SD at all points to the next order beyond the linear theory; `next_medium` has the terms."""
 
 from __future__ import annotations
 
@@ -12,11 +12,11 @@ from typing import TYPE_CHECKING
 import numpy as np
 from numpy.typing import NDArray
 
-from cable.noise.events import fastest_rate_per_ms
+from cable.noise.beyond.events import fastest_rate_per_ms
+from cable.noise.beyond.next_medium import NextMedium, bare_medium, linear_spectra, with_multiplicative
+from cable.noise.beyond.sinc_rule import SincRule
 from cable.noise.integral import VARIANCE_FINITE_ABOVE, block_for, cell_rate_per_ms, cell_strip, range_u
-from cable.noise.next_medium import NextMedium, bare_medium, linear_spectra, with_multiplicative
 from cable.noise.operating_point import OperatingPoint, operating_point
-from cable.noise.sinc_rule import SincRule
 from cable.noise.smoothing import Smoothing
 from cable.noise.steepness import falls_as
 

@@ -18,7 +18,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from cable.noise.cross import by_frequency, cross_spectra
-from cable.noise.recorded_integral import integral
+from cable.noise.record.recorded_integral import integral
 from cable.theory.electrode import Electrode
 from cable.theory.filters import kept_of_trend
 from cable.theory.units import MOHM_PER_GOHM, OMEGA_PER_MS_PER_HZ, one_sided_per_Hz

@@ -16,8 +16,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from cable.noise.cross import cross_spectra
-from cable.noise.recorded_integral import integral
-from cable.noise.recordings import ideal
+from cable.noise.record.recorded_integral import integral
+from cable.noise.record.recordings import ideal
 from cable.theory.electrode import Electrode
 
 if TYPE_CHECKING:

@@ -2,11 +2,11 @@
 
 Beyond linear order conductance fluctuations γ multiply voltage fluctuations v: with A the network at the mean
 conductances and F = E - V̄, A v = γF - γv. To the next order in the fluctuating part there are (derived here):
-  1. saturating events: an event of time course h drives î(ω) instead of ĥ(ω) (`cable.noise.events`), which also
+  1. saturating events: an event of time course h drives î(ω) instead of ĥ(ω) (`cable.noise.beyond.events`), which also
      shifts the mean;
   2. a multiplicative source: γv has the covariance C_g(τ) C_v(τ) at each place, where C_v is that of v there;
   3. a fluctuating admittance: events scatter v as the admittance r T(ω) - r ĥ(0);
-  4. the crossing terms (`cable.noise.crossing`).
+  4. the crossing terms (`cable.noise.beyond.crossing`).
 The driving force E - m is that at the corrected mean. 1 to 3 are local and cost further sweeps of the same network.
 The source 2 is taken once, from v without it: carried on, it would bring a part of the order after the next, whose
 crossing terms mostly cancel it.
@@ -21,13 +21,13 @@ import numpy as np
 from numpy.typing import NDArray
 
 from cable.network.network import Response
-from cable.noise.crossing import Crossing, crossing
-from cable.noise.crossing_nearby import nearby
-from cable.noise.events import Scattering, conductance_covariance, fastest_rate_per_ms, scattering
-from cable.noise.local_impedance import LocalImpedance, local_impedance
+from cable.noise.beyond.crossing import Crossing, crossing
+from cable.noise.beyond.crossing_nearby import nearby
+from cable.noise.beyond.events import Scattering, conductance_covariance, fastest_rate_per_ms, scattering
+from cable.noise.beyond.local_impedance import LocalImpedance, local_impedance
+from cable.noise.beyond.sinc_rule import SincRule
 from cable.noise.operating_point import OperatingPoint
 from cable.noise.population import Source, total_spectrum
-from cable.noise.sinc_rule import SincRule
 from cable.theory.synapse import SynapticInput
 
 Floats = NDArray[np.float64]

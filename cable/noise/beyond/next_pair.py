@@ -10,10 +10,10 @@ from typing import TYPE_CHECKING
 import numpy as np
 from numpy.typing import NDArray
 
+from cable.noise.beyond.next_medium import NextMedium
+from cable.noise.beyond.next_order import NextOrder
 from cable.noise.cross import by_frequency
 from cable.noise.integral import block_for
-from cable.noise.next_medium import NextMedium
-from cable.noise.next_order import NextOrder
 from cable.noise.pairs import Pair
 from cable.theory.units import OMEGA_PER_MS_PER_HZ, one_sided_per_Hz
 

@@ -23,7 +23,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from cable.noise.local_impedance import LocalImpedance
+from cable.noise.beyond.local_impedance import LocalImpedance
 from cable.theory.kernel import Kernel
 from cable.theory.synapse import SynapticInput
 
