@@ -149,6 +149,8 @@ def _one(index: int, plan: Plan, schedule: Schedule, seed: SeedSequence) -> RunR
         _SHARED["done"][index] = share
 
     def asked_to_stop() -> bool:
-        return bool(_SHARED["stop"].is_set()) or os.getppid() != _SHARED["parent"]
+        if os.getppid() != _SHARED["parent"]:
+            os._exit(1)  # the parent was killed: nobody will take the result, nor tell this process to end
+        return bool(_SHARED["stop"].is_set())
 
     return run(plan, schedule, seed, tell, asked_to_stop)

@@ -3,10 +3,14 @@
 from __future__ import annotations
 
 import signal
+import subprocess
+import sys
 import threading
 import time
+from contextlib import suppress
 from dataclasses import replace
 from os import getpid, kill
+from pathlib import Path
 
 import numpy as np
 import pytest
@@ -165,3 +169,39 @@ def test_mistakes() -> None:
         simulate(CableModel(SPHERE, PLAIN), 10.0, 1)
     with pytest.raises(ValueError, match="correlated gamma trains"):
         simulate(stick(replace(EXCITATION, correlation=0.1, spike_train=SpikeTrain.gamma(2))), 10.0, 1, dt_ms=0.4)
+
+
+ORPHANS = """
+import sys
+import cable, morphology  # before the folders of the tests, which bear the same names
+sys.path.insert(0, {tests!r})
+from simulation.simulated_cells import stick
+cable.simulate(stick(), 1e5, 1, runs=2, processes=2, dt_ms=0.4)
+"""
+
+
+@pytest.mark.skipif(not Path("/proc").is_dir(), reason="children are counted in /proc")
+def test_a_killed_parent_leaves_no_process_behind(tmp_path: Path) -> None:
+    script = tmp_path / "orphans.py"
+    script.write_text(ORPHANS.format(tests=str(Path(__file__).parents[1])))
+
+    def running() -> int:
+        found = 0
+        for entry in Path("/proc").glob("[0-9]*/cmdline"):
+            with suppress(OSError):
+                found += str(script).encode() in entry.read_bytes()
+        return found
+
+    with subprocess.Popen([sys.executable, str(script)]) as parent:
+        for _ in range(200):
+            if running() >= 3:
+                break
+            time.sleep(0.1)
+        assert running() >= 3
+        time.sleep(0.5)
+        parent.kill()
+    for _ in range(100):
+        if running() == 0:
+            break
+        time.sleep(0.1)
+    assert running() == 0
