@@ -25,6 +25,7 @@ from cable.noise.operating_point import OperatingPoint
 Floats = NDArray[np.float64]
 Complexes = NDArray[np.complex128]
 NUDGE = 1e-7  # relative distance kept between the rates of modes and kernels, where a difference of both is divided by
+PLACES = 500  # handled at once
 DENSE = 120  # nodes up to which all modes are computed by a dense method
 
 
@@ -50,16 +51,22 @@ class Crossing:
         relaxed = mu + 1j * omega[:, None]
         both = relaxed[:, :, None] * relaxed[:, None, :].conj()
         result = np.zeros(both.shape, dtype=np.complex128)
-        flat = [one.reshape(len(mu), -1) for one in self.couplings]
-        heard = [_heard(mu, *one) for one in self.covariances]
-        for a, one in enumerate(self.covariances):
-            inner = _turned(mu, relaxed, one)
-            for c, (b, p) in enumerate(self.covariances):
-                colour = (b * 2 * p / (p**2 + omega[:, None] ** 2)).sum(axis=1).real
-                third = _contracted(flat[a], inner, flat[c]) / both * colour[:, None, None]
+        for one, first in zip(self.covariances, self.couplings, strict=True):
+            heard = _heard(mu, *one)
+            for other, second in zip(self.covariances, self.couplings, strict=True):
+                b, p = other
+                # sums over one of the two inner modes, which no frequency enters
+                sums = [_summed(first, size / (mu + rate), second) for size, rate in zip(b, p, strict=True)]
+                # (a), of inputs c and a: a fluctuation at rest inside the memory of another one
+                colour = (one[0] * 2 * one[1] / (one[1] ** 2 + omega[:, None] ** 2)).sum(axis=1).real
+                third = _joined([1 / (relaxed + rate) for rate in p], sums).swapaxes(1, 2)
+                third = third / both * colour[:, None, None]
                 result += third + third.swapaxes(1, 2).conj()
-                agreed = _agreed(mu, heard[a], heard[c], one, (b, p), omega)
-                result += _contracted(flat[a], agreed, flat[c]).swapaxes(1, 2) / both
+                # (b), of a and c: ∫ κ_k(τ) κ'_l(-τ) e^{-iωτ} dτ with κ as heard for τ > 0; before, a mode has heard
+                # b e^{pτ}/(p + μ) of a fluctuation. The half τ < 0 is the other half of c and a
+                later = [_spectrum(mu, heard, one[1], rate, omega) for rate in p]
+                agreed = _joined(later, sums)
+                result += (agreed.swapaxes(1, 2) + agreed.conj()) / both
         return result
 
     def spectra(self, by_mode: Complexes) -> Floats:
@@ -88,41 +95,21 @@ def _heard(mu: Floats, b: Complexes, p: Complexes) -> tuple[Complexes, Complexes
     return (b * (1 / apart + 1 / (p + mu[:, None]))).sum(axis=1), -b / apart
 
 
-def _turned(mu: Floats, relaxed: Complexes, one: tuple[Complexes, Complexes]) -> Complexes:
-    """(F, K, K) what a fluctuation at rest inside the memory of another one is turned into, Σ b/((μ+p+iω)(μ'+p))."""
-    return sum(
-        (b / (relaxed[:, :, None] + p) / (mu + p) for b, p in zip(*one, strict=True)),
-        np.zeros((len(relaxed), len(mu), len(mu)), dtype=np.complex128),
-    )
+def _summed(first: Floats, weight: Complexes, second: Floats) -> Complexes:
+    """(K, K²) Σ_l D_mkl w_l D'_nkl, by k and mn: one product of matrices for every k."""
+    return np.asarray(np.matmul((first * weight).swapaxes(0, 1), second.transpose(1, 2, 0)).reshape(len(weight), -1))
 
 
-def _contracted(first: Floats, between: Complexes, second: Floats) -> Complexes:
-    """(F, K, K) Σ_kl D_mkl between_kl D'_nkl from couplings (K, K²): one product for all frequencies."""
-    frequencies, count, _ = between.shape
-    turned = first * between.reshape(frequencies, 1, -1)
-    found = turned.reshape(frequencies * count, -1) @ second.T
-    return np.asarray(found.reshape(frequencies, count, count))
+def _joined(inner: list[Complexes], sums: list[Complexes]) -> Complexes:
+    """(F, K, K) Σ_k inner_k · sums_k,mn, over all exponentials at once."""
+    frequencies, count = inner[0].shape
+    return np.asarray((np.concatenate(inner, axis=1) @ np.concatenate(sums)).reshape(frequencies, count, count))
 
 
-def _agreed(
-    mu: Floats,
-    heard_a: tuple[Complexes, Complexes],
-    heard_c: tuple[Complexes, Complexes],
-    one: tuple[Complexes, Complexes],
-    other: tuple[Complexes, Complexes],
-    omega: Floats,
-) -> Complexes:
-    """(F, K, K) ∫ κ_k(τ) κ'_l(-τ) e^{-iωτ} dτ with κ as heard; before, at τ < 0, a mode has heard b e^{pτ}/(p + μ)."""
-    (b_a, p_a), (b_c, p_c) = one, other
+def _spectrum(mu: Floats, heard: tuple[Complexes, Complexes], rates: Complexes, p: complex, omega: Floats) -> Complexes:
+    """(F, K) ∫₀^∞ of what is heard times e^{-(p + iω)τ}."""
     shift = 1j * omega[:, None]
-    total = np.zeros((len(omega), len(mu), len(mu)), dtype=np.complex128)
-    for b, p in zip(b_c, p_c, strict=True):
-        after = heard_a[0] / (mu + p + shift) + (heard_a[1] / (p_a + p + shift[:, :, None])).sum(axis=2)
-        total += after[:, :, None] * (b / (p + mu))
-    for b, p in zip(b_a, p_a, strict=True):
-        after = heard_c[0] / (mu + p - shift) + (heard_c[1] / (p_c + p - shift[:, :, None])).sum(axis=2)
-        total += (b / (p + mu))[:, None] * after[:, None, :]
-    return total
+    return np.asarray(heard[0] / (mu + p + shift) + (heard[1] / (rates + p + shift[:, :, None])).sum(axis=2))
 
 
 def crossing(point: OperatingPoint, mean_mV: Floats, count: int) -> Crossing:
@@ -137,12 +124,19 @@ def crossing(point: OperatingPoint, mean_mV: Floats, count: int) -> Crossing:
         np.add.at(number, parent, on_pieces / 2)
         number[1:] += on_pieces / 2
         weighted = shapes * (number * (one.reversal_mV - mean_mV))[:, None]
-        busy = number > 0
-        here = shapes[busy]
-        pairs = (here[:, :, None] * here[:, None, :]).reshape(len(here), -1)
-        couplings.append((weighted[busy].T @ pairs).reshape(count := len(rates), count, count))
+        couplings.append(_triples(weighted[number > 0], shapes[number > 0]))
         covariances.append(conductance_covariance(one))
     return Crossing(shapes, rates, tuple(couplings), tuple(covariances))
+
+
+def _triples(weighted: Floats, shapes: Floats) -> Floats:
+    """(K, K, K) Σ over places of three modes' product, one of them weighted; some places at a time."""
+    count = shapes.shape[1]
+    total = np.zeros((count, count * count))
+    for start in range(0, len(shapes), PLACES):
+        here = shapes[start : start + PLACES]
+        total += weighted[start : start + PLACES].T @ (here[:, :, None] * here[:, None, :]).reshape(len(here), -1)
+    return total.reshape(count, count, count)
 
 
 def slow_modes(point: OperatingPoint, count: int) -> tuple[Floats, Floats]:

@@ -170,14 +170,17 @@ class NextMedium:
             found.append((on_pieces[:, None] * self.on_pieces(extra), at_nodes[:, None] * extra))
         return found
 
-    def spectra(self, omega_per_ms: Floats) -> Floats:
-        """(E + 1, F) two-sided spectrum of the voltage at every node, mV²·ms."""
+    def spectra(self, omega_per_ms: Floats, across: bool = True) -> Floats:
+        """(E + 1, F) two-sided spectrum of the voltage at every node, mV²·ms.
+
+        Without `across`, what the slow modes bring by places that hear of each other is left out.
+        """
         response, events = self.response(omega_per_ms)
         sources = self.sources(omega_per_ms, events)
         found = response.spectra(sources.piece_strength, sources.piece_moment, sources.node_strength)
         for common, voltage in self.in_step(response):
             found = found + common * np.abs(voltage) ** 2
-        if self.crossed is not None:
+        if self.crossed is not None and across:
             found = found + self.crossed.spectra(self.crossed.by_mode(omega_per_ms))
         return found
 
