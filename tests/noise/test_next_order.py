@@ -116,6 +116,22 @@ def test_splitting_an_input_in_two_changes_nothing() -> None:
     assert two.mean_mV == pytest.approx(one.mean_mV, rel=EXACT)
 
 
+@pytest.mark.parametrize("seed", [3, 9])
+def test_the_error_says_what_modes_are_missing(seed: int, monkeypatch: pytest.MonkeyPatch) -> None:
+    """Against all modes there are; the estimate of the largest error may be a few times too low, not a hundred."""
+    import cable.noise.beyond.next_order as next_order
+
+    cell = model(arbor(seed, 80), replace(EXCITATION, conductance_nS=1.5), INHIBITION)
+    monkeypatch.setattr(next_order, "MODES", 10_000)
+    exact = cell.next_order()
+    for modes in (10, 20, 40):
+        monkeypatch.setattr(next_order, "MODES", modes)
+        few = cell.next_order()
+        apart = np.abs(few.variance_mV2 / exact.variance_mV2 - 1)
+        assert apart.max() < 4 * few.relative_error
+    assert apart.max() < 1e-3 and np.abs(exact.sd_mV / exact.linear.sd_mV - 1).max() > 0.1
+
+
 def test_dividing_a_cylinder_changes_next_to_nothing() -> None:
     coarse, fine = (model(arbor(6, 12, untapered=True)) for _ in range(2))
     import cable.noise.beyond.next_order as next_order
